@@ -1,0 +1,1 @@
+"""Charts: one file per figure and one for the style they share."""

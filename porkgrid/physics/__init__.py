@@ -1,0 +1,1 @@
+"""Pure functions of arrays and numbers: no files, no printing, no dates as text."""

@@ -1,0 +1,1 @@
+"""Where bodies are: names, constants, kernels, small-body elements, epochs and state tables."""

@@ -1,0 +1,1 @@
+"""The engine: legs, routes, measures, limits, tiles, store and ranking."""
