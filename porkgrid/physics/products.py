@@ -1,0 +1,37 @@
+"""Products without cancellation, by fused multiply-add."""
+
+from __future__ import annotations
+
+from llvmlite import ir
+from numba import njit, types
+from numba.extending import intrinsic
+
+from porkgrid.physics.timeflight import ROW
+
+
+@intrinsic
+def _fma(typingctx, a, b, c):
+    """a·b + c, rounded once."""
+
+    def generate(context, builder, signature, arguments):
+        return builder.fma(*arguments)
+
+    return types.float64(types.float64, types.float64, types.float64), generate
+
+
+@njit(**ROW, inline="always")
+def difference_of_products(a, b, c, d):
+    """a·b − c·d to within two units in the last place (Kahan; Jeannerod, Louvet and Muller 2013)."""
+    cd = c * d
+    lost = _fma(-c, d, cd)
+    return _fma(a, b, -cd) + lost
+
+
+@njit(**ROW, inline="always")
+def cross(ax, ay, az, bx, by, bz):
+    """a × b, every component to within two units in the last place."""
+    return (
+        difference_of_products(ay, bz, az, by),
+        difference_of_products(az, bx, ax, bz),
+        difference_of_products(ax, by, ay, bx),
+    )

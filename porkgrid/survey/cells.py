@@ -1,0 +1,108 @@
+"""What is known of the cells of a grid before any measure is taken.
+
+A cell is one (departure date, arrival date) pair; n departure dates and m arrival dates make n × m cells.
+Legs hold the options that were kept for the cell; a direct flight is a route of one leg.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+from functools import cached_property
+
+import numpy as np
+
+from porkgrid.sky.bodies import Body, pole_axes
+from porkgrid.sky.states import StateTable
+
+
+@dataclass(frozen=True)
+class ApsisOrbit:
+    """A parking or capture orbit: apsis radii in km, inclination in radians (None: as the asymptote asks)."""
+
+    periapsis_km: float
+    apoapsis_km: float
+    inclination_rad: float | None = None
+
+
+@dataclass
+class LegCells:
+    """One leg in every cell. Vectors are (3, n, m) in ICRF axes, the rest (n, m); NaN where it cannot be flown."""
+
+    v_inf_out: np.ndarray  # km/s, relative to the body left
+    v_inf_in: np.ndarray  # km/s, relative to the body reached
+    tof_days: np.ndarray
+    transfer_angle_rad: np.ndarray  # within the last revolution, 0 to 2π
+    sun_min_km: np.ndarray  # on the arc flown
+    sun_max_km: np.ndarray
+    revs: np.ndarray
+    branch: np.ndarray  # −1 left, +1 right, 0 without revolutions
+
+
+@dataclass
+class Cells:
+    """The legs of a grid with the tables of the bodies at its two ends."""
+
+    departure: StateTable
+    arrival: StateTable
+    earth_at_arrival: np.ndarray  # (3, m) km, heliocentric
+    legs: list[LegCells]
+    parking: ApsisOrbit | None = None
+    capture: ApsisOrbit | None = None
+    flybys: list = field(default_factory=list)
+
+    @cached_property
+    def departure_axes(self) -> np.ndarray:
+        """(n, 3, 3): rows are the axes in which departure declination and right ascension are given."""
+        return pole_axes(self.departure.body, self.departure.jd)
+
+    @cached_property
+    def arrival_axes(self) -> np.ndarray:
+        """(m, 3, 3): rows are the axes in which arrival declination is given."""
+        return pole_axes(self.arrival.body, self.arrival.jd)
+
+    @cached_property
+    def c3(self) -> np.ndarray:
+        """(n, m) departure energy, km²/s²."""
+        return _square(self.legs[0].v_inf_out)
+
+    @cached_property
+    def v_inf_departure(self) -> np.ndarray:
+        """(n, m) km/s."""
+        return np.sqrt(self.c3)
+
+    @cached_property
+    def v_inf_arrival(self) -> np.ndarray:
+        """(n, m) km/s."""
+        return np.sqrt(_square(self.legs[-1].v_inf_in))
+
+    @cached_property
+    def departure_declination_rad(self) -> np.ndarray:
+        """(n, m) declination of the departure asymptote."""
+        z = _along(self.departure_axes[:, 2, :, None], self.legs[0].v_inf_out)
+        return np.arcsin(np.clip(z / self.v_inf_departure, -1.0, 1.0))
+
+    @cached_property
+    def shape(self) -> tuple[int, int]:
+        """(n, m)."""
+        return len(self.departure.jd), len(self.arrival.jd)
+
+
+def gm_of(body: Body) -> float:
+    """GM of a body that must have one, km³/s²."""
+    assert body.gm_km3_s2 is not None  # the route's features admit no measure that needs it otherwise
+    return body.gm_km3_s2
+
+
+def radius_of(body: Body) -> float:
+    """Equatorial radius of a body that must have one, km."""
+    assert body.radius_km is not None
+    return body.radius_km
+
+
+def _square(vector: np.ndarray) -> np.ndarray:
+    return vector[0] * vector[0] + vector[1] * vector[1] + vector[2] * vector[2]
+
+
+def _along(axis: np.ndarray, vector: np.ndarray) -> np.ndarray:
+    """Component of `vector` (3, n, m) along `axis`, (n, 3, 1) per row of the grid."""
+    return axis[:, 0] * vector[0] + axis[:, 1] * vector[1] + axis[:, 2] * vector[2]

@@ -1,0 +1,255 @@
+"""The registry of measures: every number of a cell that can be stored, limited, ranked, drawn or listed.
+
+Adding a measure is one entry here. `{n}` in a name makes one measure per leg or per flyby. `compute` takes
+the `Cells` of a grid and returns an array that broadcasts to (departure dates, arrival dates).
+"""
+
+from __future__ import annotations
+
+import difflib
+from collections.abc import Callable, Iterable, Set
+from dataclasses import dataclass, replace
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from porkgrid.physics import burns
+from porkgrid.physics.constants import AU_KM
+
+if TYPE_CHECKING:
+    from porkgrid.sky.bodies import Body
+    from porkgrid.survey.cells import Cells
+
+BOTH, BY_DEPARTURE, BY_ARRIVAL = ("departure", "arrival"), ("departure",), ("arrival",)
+
+FEATURES = {
+    "parking": "a parking orbit: parking = { periapsis_altitude_km = …, apoapsis_altitude_km = … } "
+    "in the first encounter",
+    "capture": "a capture orbit: capture = { periapsis_altitude_km = …, apoapsis_altitude_km = … } "
+    "in the last encounter",
+    "entry": "an arrival body with an atmosphere in the body table",
+    "departure pole": "a departure body with a pole in the body table",
+    "arrival pole": "an arrival body with a pole in the body table",
+    "mars arrival": "Mars as the arrival body",
+}
+
+
+@dataclass(frozen=True)
+class Measure:
+    """A named number of a cell. `symbol` is mathtext for axes; `unit` is spelt as it is shown."""
+
+    name: str
+    unit: str
+    symbol: str
+    meaning: str
+    compute: Callable[..., np.ndarray]
+    dims: tuple[str, ...] = BOTH
+    needs: tuple[str, ...] = ()
+
+    @property
+    def label(self) -> str:
+        """Axis label: symbol and unit."""
+        return self.symbol if self.unit == "1" else f"{self.symbol} ({self.unit})"
+
+
+def _departure(cells: Cells) -> np.ndarray:
+    orbit, gm = cells.parking, cells.departure.body.gm_km3_s2
+    assert orbit is not None and gm is not None
+    apsides = (orbit.periapsis_km, orbit.apoapsis_km)
+    if orbit.inclination_rad is None:
+        return burns.apsis_burn(cells.v_inf_departure, *apsides, gm)
+    return burns.departure_burn(
+        cells.v_inf_departure, cells.departure_declination_rad, *apsides, orbit.inclination_rad, gm
+    )
+
+
+def _capture(cells: Cells) -> np.ndarray:
+    orbit, gm = cells.capture, cells.arrival.body.gm_km3_s2
+    assert orbit is not None and gm is not None
+    return burns.apsis_burn(cells.v_inf_arrival, orbit.periapsis_km, orbit.apoapsis_km, gm)
+
+
+def _total(cells: Cells) -> np.ndarray:
+    total = _departure(cells)
+    return total if cells.capture is None else total + _capture(cells)
+
+
+def _entry_speed(cells: Cells) -> np.ndarray:
+    body = cells.arrival.body
+    assert body.radius_km is not None and body.entry_altitude_km is not None and body.gm_km3_s2 is not None
+    return burns.hyperbola_speed(
+        cells.v_inf_arrival, body.radius_km + body.entry_altitude_km, body.gm_km3_s2
+    )
+
+
+def _right_ascension(cells: Cells) -> np.ndarray:
+    x, y, z = cells.legs[0].v_inf_out
+    axes = cells.departure_axes[..., None]  # (n, 3, 3, 1)
+    along = axes[:, 0, 0] * x + axes[:, 0, 1] * y + axes[:, 0, 2] * z
+    across = axes[:, 1, 0] * x + axes[:, 1, 1] * y + axes[:, 1, 2] * z
+    degrees = np.degrees(np.arctan2(across, along))
+    return np.where(degrees < 0.0, degrees + 360.0, degrees)
+
+
+def _arrival_declination(cells: Cells) -> np.ndarray:
+    x, y, z = cells.legs[-1].v_inf_in
+    pole = cells.arrival_axes[:, 2, :]  # (m, 3)
+    sine = (pole[:, 0] * x + pole[:, 1] * y + pole[:, 2] * z) / cells.v_inf_arrival
+    return np.degrees(np.arcsin(np.clip(sine, -1.0, 1.0)))
+
+
+def _arrival_phase(cells: Cells) -> np.ndarray:
+    sunward = -cells.arrival.position / np.linalg.norm(cells.arrival.position, axis=0)
+    x, y, z = cells.legs[-1].v_inf_in
+    cosine = (sunward[0] * x + sunward[1] * y + sunward[2] * z) / cells.v_inf_arrival
+    return np.degrees(np.arccos(np.clip(cosine, -1.0, 1.0)))
+
+
+def _sun_distance(cells: Cells) -> np.ndarray:
+    return np.linalg.norm(cells.arrival.position, axis=0) / AU_KM
+
+
+def _earth_distance(cells: Cells) -> np.ndarray:
+    return np.linalg.norm(cells.arrival.position - cells.earth_at_arrival, axis=0) / AU_KM
+
+
+def _sun_earth_body(cells: Cells) -> np.ndarray:
+    sight = cells.arrival.position - cells.earth_at_arrival
+    sunward = -cells.earth_at_arrival
+    across = np.linalg.norm(np.cross(sight, sunward, axis=0), axis=0)
+    return np.degrees(np.arctan2(across, np.sum(sight * sunward, axis=0)))
+
+
+def _mars_season(cells: Cells) -> np.ndarray:
+    from porkgrid.sky.seasons import mars_ls_deg
+
+    return mars_ls_deg(cells.arrival.position, cells.arrival.velocity, cells.arrival.jd)
+
+
+def _tof(cells: Cells) -> np.ndarray:
+    return cells.arrival.jd[None, :] - cells.departure.jd[:, None]
+
+
+def _nearest_sun(cells: Cells) -> np.ndarray:
+    return np.minimum.reduce([leg.sun_min_km for leg in cells.legs]) / AU_KM
+
+
+def _farthest_sun(cells: Cells) -> np.ndarray:
+    return np.maximum.reduce([leg.sun_max_km for leg in cells.legs]) / AU_KM
+
+
+_ENTRIES = [
+    Measure("departure_epoch_jd_tdb", "days", "departure (JD TDB)", "departure epoch, TDB Julian date",
+            lambda c: c.departure.jd[:, None], BY_DEPARTURE),
+    Measure("arrival_epoch_jd_tdb", "days", "arrival (JD TDB)", "arrival epoch, TDB Julian date",
+            lambda c: c.arrival.jd, BY_ARRIVAL),
+    Measure("c3_km2_s2", "km²/s²", "$C_3$", "departure energy: the excess speed squared", lambda c: c.c3),
+    Measure("v_inf_departure_km_s", "km/s", r"departure $v_\infty$", "departure excess speed",
+            lambda c: c.v_inf_departure),
+    Measure("dla_deg", "deg", "DLA", "declination of the launch asymptote (ICRF axes at Earth, else the body's pole)",
+            lambda c: np.degrees(c.departure_declination_rad), needs=("departure pole",)),
+    Measure("rla_deg", "deg", "RLA", "right ascension of the launch asymptote, 0 to 360 (ICRF axes at Earth, "
+            "else from the node of the body's equator on the ICRF equator)",
+            _right_ascension, needs=("departure pole",)),
+    Measure("dv_departure_km_s", "km/s", r"departure $\Delta v$", "burn from the parking orbit's periapsis, "
+            "with the plane change that the asymptote's declination asks of the orbit's inclination",
+            _departure, needs=("parking",)),
+    Measure("v_inf_arrival_km_s", "km/s", r"arrival $v_\infty$", "arrival excess speed", lambda c: c.v_inf_arrival),
+    Measure("dv_capture_km_s", "km/s", r"capture $\Delta v$", "burn at the capture orbit's periapsis",
+            _capture, needs=("capture",)),
+    Measure("entry_speed_km_s", "km/s", "entry speed", "inertial speed at the body's entry interface altitude",
+            _entry_speed, needs=("entry",)),
+    Measure("arrival_declination_deg", "deg", "arrival declination",
+            "declination of the incoming velocity asymptote to the arrival body's equator",
+            _arrival_declination, needs=("arrival pole",)),
+    Measure("arrival_phase_deg", "deg", "arrival phase angle",
+            "angle at the arrival body between the incoming velocity asymptote and the Sun", _arrival_phase),
+    Measure("arrival_sun_distance_au", "au", "Sun distance at arrival", "distance from the Sun at arrival",
+            _sun_distance, BY_ARRIVAL),
+    Measure("arrival_earth_distance_au", "au", "Earth distance at arrival", "distance from the Earth at arrival",
+            _earth_distance, BY_ARRIVAL),
+    Measure("arrival_sep_deg", "deg", "Sun–Earth–body angle at arrival",
+            "angle at the Earth between the Sun and the arrival body; small near solar conjunction",
+            _sun_earth_body, BY_ARRIVAL),
+    Measure("arrival_mars_ls_deg", "deg", r"Mars $L_s$ at arrival", "areocentric longitude of the Sun at arrival "
+            "(0 = northern spring)", _mars_season, BY_ARRIVAL, ("mars arrival",)),
+    Measure("tof_days", "days", "flight time", "time of flight from departure to arrival", _tof),
+    Measure("dv_total_km_s", "km/s", r"total $\Delta v$", "sum of all burns that the route makes",
+            _total, needs=("parking",)),
+    Measure("sun_min_au", "au", "least Sun distance", "least distance from the Sun on the way", _nearest_sun),
+    Measure("sun_max_au", "au", "greatest Sun distance", "greatest distance from the Sun on the way", _farthest_sun),
+]  # fmt: skip
+
+_LEG_ENTRIES = [
+    Measure("leg{n}_tof_days", "days", "leg {n} flight time", "time of flight of leg {n}",
+            lambda c, n: c.legs[n - 1].tof_days),
+    Measure("leg{n}_transfer_angle_deg", "deg", "leg {n} transfer angle",
+            "angle swept about the Sun on leg {n}, whole revolutions left out",
+            lambda c, n: np.degrees(c.legs[n - 1].transfer_angle_rad)),
+    Measure("leg{n}_revs", "1", "leg {n} revolutions", "whole revolutions about the Sun on leg {n}",
+            lambda c, n: c.legs[n - 1].revs),
+    Measure("leg{n}_branch", "1", "leg {n} branch",
+            "which solution with revolutions: −1 left (longer period), +1 right, 0 no revolutions",
+            lambda c, n: c.legs[n - 1].branch),
+    Measure("leg{n}_sun_min_au", "au", "leg {n} least Sun distance", "least Sun distance on the arc of leg {n}",
+            lambda c, n: c.legs[n - 1].sun_min_km / AU_KM),
+    Measure("leg{n}_sun_max_au", "au", "leg {n} greatest Sun distance", "greatest Sun distance on the arc of leg {n}",
+            lambda c, n: c.legs[n - 1].sun_max_km / AU_KM),
+]  # fmt: skip
+
+
+def all_entries() -> list[Measure]:
+    """Every entry of the registry, names with `{n}` unexpanded."""
+    return [*_ENTRIES, *_LEG_ENTRIES]
+
+
+def features_of(bodies: Iterable[Body], parking: bool, capture: bool) -> frozenset[str]:
+    """Features of a route (keys of `FEATURES`) that decide which measures it has."""
+    route = list(bodies)
+    first, last = route[0], route[-1]
+    has = {
+        "parking": parking,
+        "capture": capture,
+        "entry": None not in (last.entry_altitude_km, last.radius_km, last.gm_km3_s2),
+        "departure pole": first.pole is not None,
+        "arrival pole": last.pole is not None,
+        "mars arrival": last.name == "mars",
+    }
+    return frozenset(name for name, present in has.items() if present)
+
+
+def measures_for(legs: int, features: Set[str]) -> dict[str, Measure]:
+    """The measures that a route of so many legs with these features has, by name."""
+    expanded = _ENTRIES + [_numbered(entry, n + 1) for n in range(legs) for entry in _LEG_ENTRIES]
+    return {entry.name: entry for entry in expanded if set(entry.needs) <= features}
+
+
+def why_absent(name: str, legs: int, features: Set[str]) -> str:
+    """Say why a route has no measure of this name, and what would be right."""
+    everything = measures_for(max(legs, 9), frozenset(FEATURES))
+    known = everything.get(name)
+    if known is None:
+        present = measures_for(legs, features)
+        near = difflib.get_close_matches(name, present, n=1, cutoff=0.4)
+        hint = f"the nearest is {near[0]!r}" if near else "`porkgrid measures` lists them"
+        return f"there is no measure {name!r}; {hint}"
+    missing = [FEATURES[need] for need in known.needs if need not in features]
+    if missing:
+        return f"this route has no {name!r}; it needs {' and '.join(missing)}"
+    return f"this route has no {name!r}: it has {legs} leg{'s' if legs > 1 else ''}"
+
+
+def default_rank(features: Set[str]) -> str:
+    """The measure to rank by when the scenario names none: total Δv where burns are known, else C3."""
+    return "dv_total_km_s" if "parking" in features else "c3_km2_s2"
+
+
+def _numbered(entry: Measure, n: int) -> Measure:
+    compute = entry.compute
+    return replace(
+        entry,
+        name=entry.name.format(n=n),
+        symbol=entry.symbol.format(n=n),
+        meaning=entry.meaning.format(n=n),
+        compute=lambda cells: compute(cells, n),
+    )
