@@ -126,34 +126,32 @@ def _universal_anomaly(tau: Floats, sigma: Floats, alpha: Floats) -> Floats:
     Its slope is the radius, which is never negative, so one root lies in the bracket; a step that leaves
     the bracket, or is not at most half the one before, is replaced by a bisection.
     """
-    chi = np.zeros_like(tau)
     low, high = np.zeros_like(tau), _widest_anomaly(tau, alpha)
-    guess = np.minimum(tau, high)  # exact on a circle
+    chi = np.where(tau > 0.0, np.minimum(tau, high), 0.0)  # exact on a circle
     last_step = high.copy()
     todo = np.flatnonzero(tau > 0.0)
     for _ in range(_MOST_STEPS):
         if todo.size == 0:
             break
-        now, t, s, a = guess[todo], tau[todo], sigma[todo], alpha[todo]
-        u0, u1, u2, u3 = _universal_functions(now, a)
+        now, t, s = chi[todo], tau[todo], sigma[todo]
+        u0, u1, u2, u3 = _universal_functions(now, alpha[todo])
         miss = u1 + s * u2 + u3 - t
-        slope = u0 + s * u1 + u2
-        chi[todo] = now
+        radius = u0 + s * u1 + u2
         low[todo] = np.where(miss <= 0.0, now, low[todo])
         high[todo] = np.where(miss >= 0.0, now, high[todo])
 
         with np.errstate(divide="ignore", invalid="ignore"):
-            newton = now - miss / slope
-        quick = np.abs(newton - now) <= 0.5 * last_step[todo]
-        inside = (newton > low[todo]) & (newton < high[todo])
-        following = np.where(quick & inside, newton, 0.5 * (low[todo] + high[todo]))
+            newton = now - miss / radius
+        sound = (
+            (newton >= low[todo]) & (newton <= high[todo]) & (np.abs(newton - now) <= 0.5 * last_step[todo])
+        )
+        following = np.where(sound, newton, 0.5 * (low[todo] + high[todo]))
+        chi[todo] = following
         last_step[todo] = np.abs(following - now)
-        guess[todo] = following
 
-        rounding = _EPS * (np.abs(u1) + np.abs(s * u2) + np.abs(u3) + t)
-        # A residual of rounding size can still be improved where the radius is small, so both must hold.
-        settled = (miss == 0.0) | (np.abs(following - now) <= _EPS * now)
-        settled |= (np.abs(miss) <= rounding) & (np.abs(following - now) <= 1e-10 * now)
+        # Once the equation holds to rounding the step just taken was the last that could tell anything.
+        rounding = 4.0 * _EPS * (np.abs(u1) + np.abs(s * u2) + np.abs(u3) + t)
+        settled = (sound & (np.abs(miss) <= rounding)) | (last_step[todo] <= _EPS * now)
         todo = todo[~settled]
     return chi
 

@@ -6,13 +6,14 @@ Legs hold the options that were kept for the cell; a direct flight is a route of
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 from functools import cached_property
 
 import numpy as np
 
 from porkgrid.sky.bodies import Body, pole_axes
 from porkgrid.sky.states import StateTable
+from porkgrid.survey.legs import LegCells
 
 
 @dataclass(frozen=True)
@@ -25,20 +26,6 @@ class ApsisOrbit:
 
 
 @dataclass
-class LegCells:
-    """One leg in every cell. Vectors are (3, n, m) in ICRF axes, the rest (n, m); NaN where it cannot be flown."""
-
-    v_inf_out: np.ndarray  # km/s, relative to the body left
-    v_inf_in: np.ndarray  # km/s, relative to the body reached
-    tof_days: np.ndarray
-    transfer_angle_rad: np.ndarray  # within the last revolution, 0 to 2π
-    sun_min_km: np.ndarray  # on the arc flown
-    sun_max_km: np.ndarray
-    revs: np.ndarray
-    branch: np.ndarray  # −1 left, +1 right, 0 without revolutions
-
-
-@dataclass
 class Cells:
     """The legs of a grid with the tables of the bodies at its two ends."""
 
@@ -48,7 +35,6 @@ class Cells:
     legs: list[LegCells]
     parking: ApsisOrbit | None = None
     capture: ApsisOrbit | None = None
-    flybys: list = field(default_factory=list)
 
     @cached_property
     def departure_axes(self) -> np.ndarray:
@@ -59,6 +45,11 @@ class Cells:
     def arrival_axes(self) -> np.ndarray:
         """(m, 3, 3): rows are the axes in which arrival declination is given."""
         return pole_axes(self.arrival.body, self.arrival.jd)
+
+    @property
+    def status(self) -> np.ndarray:
+        """(n, m) FLOWN, or what keeps the first leg that cannot be flown from it (physics.lambert)."""
+        return np.maximum.reduce([leg.status for leg in self.legs])
 
     @cached_property
     def c3(self) -> np.ndarray:
@@ -80,23 +71,6 @@ class Cells:
         """(n, m) declination of the departure asymptote."""
         z = _along(self.departure_axes[:, 2, :, None], self.legs[0].v_inf_out)
         return np.arcsin(np.clip(z / self.v_inf_departure, -1.0, 1.0))
-
-    @cached_property
-    def shape(self) -> tuple[int, int]:
-        """(n, m)."""
-        return len(self.departure.jd), len(self.arrival.jd)
-
-
-def gm_of(body: Body) -> float:
-    """GM of a body that must have one, km³/s²."""
-    assert body.gm_km3_s2 is not None  # the route's features admit no measure that needs it otherwise
-    return body.gm_km3_s2
-
-
-def radius_of(body: Body) -> float:
-    """Equatorial radius of a body that must have one, km."""
-    assert body.radius_km is not None
-    return body.radius_km
 
 
 def _square(vector: np.ndarray) -> np.ndarray:

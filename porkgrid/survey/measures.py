@@ -131,11 +131,11 @@ def _tof(cells: Cells) -> np.ndarray:
 
 
 def _nearest_sun(cells: Cells) -> np.ndarray:
-    return np.minimum.reduce([leg.sun_min_km for leg in cells.legs]) / AU_KM
+    return np.minimum.reduce([leg.sun_range_km[0] for leg in cells.legs]) / AU_KM
 
 
 def _farthest_sun(cells: Cells) -> np.ndarray:
-    return np.maximum.reduce([leg.sun_max_km for leg in cells.legs]) / AU_KM
+    return np.maximum.reduce([leg.sun_range_km[1] for leg in cells.legs]) / AU_KM
 
 
 _ENTRIES = [
@@ -192,9 +192,9 @@ _LEG_ENTRIES = [
             "which solution with revolutions: −1 left (longer period), +1 right, 0 no revolutions",
             lambda c, n: c.legs[n - 1].branch),
     Measure("leg{n}_sun_min_au", "au", "leg {n} least Sun distance", "least Sun distance on the arc of leg {n}",
-            lambda c, n: c.legs[n - 1].sun_min_km / AU_KM),
+            lambda c, n: c.legs[n - 1].sun_range_km[0] / AU_KM),
     Measure("leg{n}_sun_max_au", "au", "leg {n} greatest Sun distance", "greatest Sun distance on the arc of leg {n}",
-            lambda c, n: c.legs[n - 1].sun_max_km / AU_KM),
+            lambda c, n: c.legs[n - 1].sun_range_km[1] / AU_KM),
 ]  # fmt: skip
 
 

@@ -1,0 +1,88 @@
+"""Dates on axes: as numbers of days, as cell edges, and as ticks at round dates."""
+
+from __future__ import annotations
+
+import numpy as np
+
+_MS_PER_DAY = 86_400_000.0
+_HOUR_STEPS = (1, 2, 3, 6, 12)
+_DAY_STEPS = (1, 2, 5, 10)
+_MONTH_STEPS = (1, 2, 3, 6)
+_YEAR_STEPS = (1, 2, 5, 10, 20, 50, 100)
+
+
+def days_from_dates(dates: np.ndarray) -> np.ndarray:
+    """Return datetime64 dates (n,) as float days since 1970-01-01."""
+    return np.asarray(dates).astype("datetime64[ms]").astype(np.int64) / _MS_PER_DAY
+
+
+def dates_from_days(days: np.ndarray | float) -> np.ndarray:
+    """Return float days since 1970-01-01 as datetime64[ms], to the nearest millisecond."""
+    return np.round(np.asarray(days, dtype=float) * _MS_PER_DAY).astype(np.int64).astype("datetime64[ms]")
+
+
+def iso_day(date: np.datetime64) -> str:
+    """Return the calendar day of a date: 2028-11-30."""
+    return str(np.datetime_as_string(np.datetime64(date, "D")))
+
+
+def cell_edges(days: np.ndarray) -> np.ndarray:
+    """Return the n + 1 edges between ascending dates (n,); a single date gets a cell of one day."""
+    if days.size == 1:
+        return np.array([days[0] - 0.5, days[0] + 0.5])
+    middles = 0.5 * (days[1:] + days[:-1])
+    return np.concatenate(([1.5 * days[0] - 0.5 * days[1]], middles, [1.5 * days[-1] - 0.5 * days[-2]]))
+
+
+def date_ticks(first_day: float, last_day: float, most: int) -> tuple[np.ndarray, list[str]]:
+    """Return at most `most` (and if possible two or more) round dates in the range, in days, with ISO labels."""
+    span = last_day - first_day
+    if span > 2.0:
+        for step in _DAY_STEPS:
+            if span / step <= most:
+                return _day_ticks(first_day, last_day, step)
+        for step in _MONTH_STEPS:
+            if span / (30.5 * step) <= most - 0.5:
+                return _month_ticks(first_day, last_day, step)
+        for step in _YEAR_STEPS:
+            if span / (365.25 * step) <= most - 0.5 or step == _YEAR_STEPS[-1]:
+                return _year_ticks(first_day, last_day, step)
+    for step in _HOUR_STEPS:
+        if span * 24.0 / step <= most:
+            return _hour_ticks(first_day, last_day, step)
+    return _day_ticks(first_day, last_day, 1)
+
+
+def _hour_ticks(first_day: float, last_day: float, step: int) -> tuple[np.ndarray, list[str]]:
+    hours = np.arange(np.ceil(first_day * 24.0 / step), np.floor(last_day * 24.0 / step) + 1.0) * step
+    dates = (hours.astype(np.int64)).astype("datetime64[h]")
+    return hours / 24.0, [f"{date}:00"[5:].replace("T", " ") for date in np.datetime_as_string(dates)]
+
+
+def _day_ticks(first_day: float, last_day: float, step: int) -> tuple[np.ndarray, list[str]]:
+    days = np.arange(np.ceil(first_day), np.floor(last_day) + 1.0).astype(np.int64).astype("datetime64[D]")
+    if step > 1:  # days of the month that divide it evenly, and none so near the next 1st that labels collide
+        of_month = (days - days.astype("datetime64[M]")).astype(int) + 1
+        days = days[
+            (of_month == 1) | ((of_month % step == (1 if step == 2 else 0)) & (of_month <= 31 - step))
+        ]
+    return days_from_dates(days), list(np.datetime_as_string(days))
+
+
+def _month_ticks(first_day: float, last_day: float, step: int) -> tuple[np.ndarray, list[str]]:
+    first, last = dates_from_days(first_day), dates_from_days(last_day)
+    months = np.arange(first.astype("datetime64[M]"), last.astype("datetime64[M]") + 1)
+    months = months[months.astype(np.int64) % step == 0]  # counted from January 1970
+    return _within(months, first, last)
+
+
+def _year_ticks(first_day: float, last_day: float, step: int) -> tuple[np.ndarray, list[str]]:
+    first, last = dates_from_days(first_day), dates_from_days(last_day)
+    years = np.arange(first.astype("datetime64[Y]"), last.astype("datetime64[Y]") + 1)
+    years = years[(years.astype(np.int64) + 1970) % step == 0]
+    return _within(years, first, last)
+
+
+def _within(marks: np.ndarray, first: np.ndarray, last: np.ndarray) -> tuple[np.ndarray, list[str]]:
+    inside = marks[(marks >= first) & (marks <= last)]
+    return days_from_dates(inside), list(np.datetime_as_string(inside))

@@ -1,0 +1,63 @@
+"""A measure of a survey as a figure needs it: its values on the whole grid, its name and its unit."""
+
+from __future__ import annotations
+
+import re
+from dataclasses import dataclass
+
+import numpy as np
+import xarray as xr
+
+from porkgrid.figures.text import one_line
+
+_SIGNS = {r"\Delta ": "Δ", r"\Delta": "Δ", r"\infty": "∞", r"\oplus": "⊕", r"\odot": "☉"}
+
+
+@dataclass(frozen=True, eq=False)
+class Measured:
+    """values: (departure, arrival) float, NaN where unknown; label: "C3"; unit: "km²/s²", or "" for a pure number."""
+
+    name: str
+    values: np.ndarray
+    label: str
+    unit: str
+
+    @property
+    def title(self) -> str:
+        """Return label and unit for an axis."""
+        return f"{self.label} ({self.unit})" if self.unit else self.label
+
+    def with_unit(self, number: str) -> str:
+        """Return a number followed by the unit."""
+        return f"{number} {self.unit}" if self.unit else number
+
+
+def read_measure(view: xr.Dataset, name: str) -> Measured:
+    """Take a measure out of a grid, spread over both dates where it depends on one only.
+
+    Raises KeyError if the grid has no such variable.
+    """
+    variable = view[name]
+    shape = (view.sizes["departure"], view.sizes["arrival"])
+    values = variable.values
+    if variable.dims == ("departure",):
+        values = values[:, None]
+    elif variable.dims == ("arrival", "departure"):
+        values = values.T
+    values = np.broadcast_to(values, shape)
+    values = np.where(np.isfinite(values), values, np.nan)
+    unit = one_line(variable.attrs.get("units", ""))
+    return Measured(
+        name, values, plain_symbol(variable.attrs.get("symbol", name)), "" if unit == "1" else unit
+    )
+
+
+def plain_symbol(symbol: str) -> str:
+    r"""Return a mathtext symbol as plain letters: ``total $\\Delta v$`` as "total Δv", ``$C_3$`` as "C3".
+
+    Setting one symbol as mathematics takes longer than all the other text of a figure.
+    """
+    text = symbol
+    for command, sign in _SIGNS.items():
+        text = text.replace(command, sign)
+    return one_line(re.sub(r"\$([^$]*)\$", lambda m: re.sub(r"[{}_^\\]", "", m.group(1)), text))

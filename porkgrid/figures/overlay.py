@@ -1,0 +1,119 @@
+"""What lies over the ground of a chart: labelled lines of a second measure, and numbered candidates."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+import numpy as np
+import pandas as pd
+from matplotlib.axes import Axes
+from matplotlib.patheffects import withStroke
+
+from porkgrid.figures.dates import days_from_dates
+from porkgrid.figures.levels import round_levels, value_text
+from porkgrid.figures.marks import add_line, add_segments
+from porkgrid.figures.measured import Measured
+from porkgrid.figures.panel import Panel
+from porkgrid.figures.placement import Room, place_markers, place_on_line
+from porkgrid.figures.raster import cut_turns
+from porkgrid.figures.style import ACCENT, INK, SMALL_PT
+from porkgrid.figures.text import put, width_in
+
+LINE_INK = "#7a1f00"
+_MARKER_IN = 0.205
+_POINTS_PER_INCH = 72.0
+_MOST_POINTS = 500  # a side, for contour lines; more cannot be seen
+_LINES = 7
+
+
+def draw_lines(
+    panel: Panel,
+    sheet: Axes,
+    measured: Measured,
+    days: tuple[np.ndarray, np.ndarray],
+    seen: np.ndarray,
+    room: Room,
+) -> None:
+    """Draw thin lines of equal value over the panel with their values written on them.
+
+    days: departure (n,) and arrival (m,) dates in days; seen: (n, m) bool, cells whose values set the levels.
+    """
+    values = measured.values[seen & np.isfinite(measured.values)]
+    if values.size == 0 or min(measured.values.shape) < 2:
+        return
+    low, high = np.quantile(values, [0.02, 0.98])
+    levels = round_levels(float(low), float(high), _LINES)
+    step = float(levels[1] - levels[0])
+    stride = max(1, int(np.ceil(max(measured.values.shape) / _MOST_POINTS)))
+    thinned = cut_turns(measured.values, measured.unit)[::stride, ::stride]
+    if min(thinned.shape) < 2:
+        return
+    drawn = panel.axes.contour(
+        days[0][::stride],
+        days[1][::stride],
+        np.ma.masked_invalid(thinned.T),
+        levels=levels,
+        colors=LINE_INK,
+        linewidths=0.8,
+        linestyles="solid",
+    )
+    for level, path in zip(drawn.levels, drawn.get_paths(), strict=True):
+        text = value_text(float(level), step)
+        pieces = [piece for piece in path.to_polygons(closed_only=False) if len(piece) > 1]
+        _label_longest(panel, sheet, text, pieces, room)
+
+
+def _label_longest(panel: Panel, sheet: Axes, text: str, pieces: Sequence[np.ndarray], room: Room) -> None:
+    """Write a value once on each of the two longest lines that have it."""
+    width = width_in(text, SMALL_PT)
+    on_slide = [np.column_stack(panel.on_slide(piece[:, 0], piece[:, 1])) for piece in pieces]
+    on_slide.sort(key=lambda line: -float(np.hypot(*np.diff(line, axis=0).T).sum()))
+    for line in on_slide[:2]:
+        place = place_on_line(line, width, SMALL_PT / _POINTS_PER_INCH, room)
+        if place is not None:
+            x, y, angle = place
+            put(
+                sheet,
+                x,
+                y,
+                text,
+                SMALL_PT,
+                color=LINE_INK,
+                rotation=angle,
+                rotation_mode="anchor",
+                ha="center",
+                va="center_baseline",
+                path_effects=[withStroke(linewidth=2.2, foreground="white")],
+            )
+
+
+def draw_candidates(panel: Panel, sheet: Axes, candidates: pd.DataFrame, room: Room) -> None:
+    """Mark the candidates by number, 1 for the first row; close ones stand aside with a leader to their dates.
+
+    Candidates outside the panel are left out; of a cluster too dense to number, the last keep only their dots.
+    """
+    x = panel.x_at(days_from_dates(pd.to_datetime(candidates["departure"]).to_numpy()))
+    y = panel.y_at(days_from_dates(pd.to_datetime(candidates["arrival"]).to_numpy()))
+    box = panel.box
+    inside = np.flatnonzero((x >= box.left) & (x <= box.right) & (y >= box.bottom) & (y <= box.top))
+    points = [(float(x[i]), float(y[i])) for i in inside]
+    places = place_markers(points, _MARKER_IN + 0.02, room)
+    placed = [(int(i), at, place) for i, at, place in zip(inside, points, places, strict=True) if place]
+    moved = [at for at, place in zip(points, places, strict=True) if place != at]
+    if moved:
+        leaders = [[at, place] for _, at, place in placed if place != at]
+        add_segments(sheet, leaders, colors=INK, linewidths=0.7)
+        dot = {"linestyle": "", "marker": "o", "markersize": 3.8, "markeredgewidth": 0.6}
+        add_line(sheet, *zip(*moved, strict=True), color=INK, markeredgecolor="white", **dot)
+    for i, _, place in placed:
+        _number(sheet, place, i + 1)
+
+
+def _number(sheet: Axes, place: tuple[float, float], number: int) -> None:
+    """Draw one round marker with its number; the first candidate stands out."""
+    face, ink = (ACCENT, "white") if number == 1 else ("white", INK)
+    size = _MARKER_IN * _POINTS_PER_INCH - 1.0
+    disc = {"marker": "o", "markersize": size, "markeredgecolor": INK, "markeredgewidth": 0.8}
+    add_line(sheet, [place[0]], [place[1]], color=face, **disc)
+    middle = {"ha": "center", "va": "center_baseline", "weight": "bold"}
+    put(sheet, *place, str(number), SMALL_PT, color=ink, **middle)

@@ -1,0 +1,137 @@
+"""What the user asks for: a TOML file to validated objects, every fault of the file found at once."""
+
+from __future__ import annotations
+
+import unicodedata
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+from pathlib import Path
+from typing import Any
+
+from pydantic import BaseModel, ConfigDict
+
+from porkgrid import _scenario_sections as sections
+from porkgrid._faults import Fault
+from porkgrid._scenario_bodies import BodySpec, body_of
+from porkgrid._scenario_parts import Encounter, Flyby, Leg, Limit, Orbit, Parking, Rank
+from porkgrid._scenario_sections import Outline
+from porkgrid._scenario_text import parse_toml, read_text
+from porkgrid.sky.bodies import Body
+
+__all__ = [
+    "BodySpec",
+    "Draft",
+    "Encounter",
+    "Flyby",
+    "Leg",
+    "Limit",
+    "Orbit",
+    "Outline",
+    "Parking",
+    "Rank",
+    "Scenario",
+    "body_of",
+    "read_scenario",
+]
+
+SLUG_LENGTH = 60  # characters, at most 240 bytes: file systems allow 255
+
+
+class Scenario(BaseModel):
+    """A faultless request. It came from the file `path` with this `text`."""
+
+    model_config = ConfigDict(frozen=True)
+
+    name: str
+    description: str
+    encounters: tuple[Encounter, ...]  # in flying order; each between the ends has a flyby
+    legs: tuple[Leg, ...]  # one fewer than encounters
+    limits: dict[str, Limit]
+    rank: Rank
+    kernels: tuple[Path, ...]
+    bodies: dict[str, BodySpec]
+    measures: tuple[str, ...] | None  # to store; None: every one
+    path: Path
+    text: str
+
+    @property
+    def slug(self) -> str:
+        """The name as a folder has it: lower case, accents dropped, hyphens between words."""
+        plain = unicodedata.normalize("NFKD", self.name.lower())
+        unaccented = "".join(each for each in plain if not unicodedata.combining(each))
+        words = "".join(each if each.isalnum() else " " for each in unaccented).split()
+        return "-".join(words)[:SLUG_LENGTH].strip("-")
+
+    @property
+    def own_bodies(self) -> dict[str, Body]:
+        """The bodies of the file's [bodies] tables, by name."""
+        return {name: body_of(name, spec) for name, spec in self.bodies.items()}
+
+
+@dataclass(frozen=True)
+class Draft:
+    """What a file says as far as it can be understood, and all faults of its structure."""
+
+    path: Path
+    faults: tuple[Fault, ...]
+    outlines: tuple[Outline, ...] = ()
+    legs: tuple[Leg | None, ...] = ()
+    limits: tuple[str, ...] = ()  # names of measures, whatever their bounds are worth
+    rank_by: str | None = None
+    measures: tuple[str, ...] = ()
+    kernels: tuple[Path, ...] = ()
+    bodies: Mapping[str, BodySpec | None] = field(default_factory=dict)
+    scenario: Scenario | None = None  # None where there are faults
+
+
+def read_scenario(path: str | Path) -> Draft:
+    """Read a scenario file and check its structure; faults of any kind are in the draft, none are raised."""
+    path = Path(path)
+    text, faults = read_text(path)
+    if faults:
+        return Draft(path, tuple(faults))
+    table, faults = parse_toml(text)
+    if faults:
+        return Draft(path, tuple(faults))
+    return _draft(path, text, table)
+
+
+def _draft(path: Path, text: str, table: dict[str, Any]) -> Draft:
+    heading, heading_faults = sections.read_heading(table)
+    outlines, encounter_faults = sections.read_encounters(table)
+    legs, leg_faults = sections.read_legs(table, len(outlines))
+    limits, limit_faults = sections.read_limits(table)
+    rank, rank_by, rank_faults = sections.read_rank(table)
+    bodies, body_faults = sections.read_bodies(table)
+    kernel_names, kernel_faults = sections.read_texts(table, "kernels", '["heron.bsp"]')
+    measures, measure_faults = sections.read_texts(table, "measures", '["c3_km2_s2", "tof_days"]')
+    faults = [*sections.unknown_keys(table), *heading_faults, *encounter_faults, *leg_faults, *limit_faults]
+    faults += [*rank_faults, *kernel_faults, *body_faults, *measure_faults]
+    kernels = tuple(path.parent / each for each in kernel_names or ())  # absolute paths stay as they are
+    scenario = None
+    if heading is not None and not faults:
+        scenario = Scenario(
+            name=heading.name,
+            description=heading.description,
+            encounters=tuple(each.whole for each in outlines if each.whole),
+            legs=tuple(leg for leg in legs if leg),
+            limits={name: limit for name, limit in limits.items() if limit},
+            rank=rank or Rank(),
+            kernels=kernels,
+            bodies={name: body for name, body in bodies.items() if body},
+            measures=None if measures is None else tuple(measures),
+            path=path,
+            text=text,
+        )
+    return Draft(
+        path=path,
+        faults=tuple(faults),
+        outlines=tuple(outlines),
+        legs=tuple(legs),
+        limits=tuple(limits),
+        rank_by=rank_by,
+        measures=tuple(measures or ()),
+        kernels=kernels,
+        bodies=bodies,
+        scenario=scenario,
+    )

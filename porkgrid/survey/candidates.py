@@ -1,0 +1,74 @@
+"""The candidates' table: every measure of the route at the dates that were picked, at full precision."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+import numpy as np
+import pandas as pd
+import zarr
+
+from porkgrid.sky.epochs import iso_from_jd
+from porkgrid.sky.states import StateTable
+from porkgrid.survey.plan import Plan
+from porkgrid.survey.rank import distinct, local_bests
+from porkgrid.survey.routes import fly_between
+from porkgrid.survey.store import BLOCKED_BY, STORE
+
+
+def pick(folder: Path, plan: Plan, by: str, sign: float, keep: int, apart_days: float) -> np.ndarray:
+    """Epochs (k, 2) of the distinct local bests of a stored measure, best first, TDB Julian dates."""
+    group = zarr.open_group(folder / STORE, mode="r")
+    rank, blocked = group[by], group[BLOCKED_BY]
+    departure, arrival = plan.tables[0].jd, plan.tables[-1].jd
+    n, m = plan.shape
+
+    def read(rows: slice) -> tuple[np.ndarray, np.ndarray]:
+        block = np.asarray(blocked[rows])
+        values = np.asarray(rank[rows] if rank.ndim == 2 else _along(rank, by, plan, rows))
+        return np.broadcast_to(values, block.shape), block
+
+    i, j, _ = local_bests(read, n, sign)
+    epochs = np.column_stack([departure[i], arrival[j]])
+    return epochs[list(distinct(epochs, apart_days, keep))]
+
+
+def _along(rank: zarr.Array, by: str, plan: Plan, rows: slice) -> np.ndarray:
+    """A measure of one date, shaped to broadcast over a band of rows."""
+    return rank[rows][:, None] if plan.measures[by].dims == ("departure",) else rank[:][None, :]
+
+
+def tabulate(plan: Plan, epochs: np.ndarray) -> pd.DataFrame:
+    """Table of candidates: rank, ISO dates, then every measure of the route. `epochs` (k, 2) as of `pick`."""
+    rows = []
+    for number, (departure, arrival) in enumerate(epochs, start=1):
+        row: dict[str, object] = {
+            "rank": number,
+            "departure": iso_from_jd(departure),
+            "arrival": iso_from_jd(arrival),
+        }
+        rows.append(row | measure_at(plan, departure, arrival))
+    columns = ["rank", "departure", "arrival", *plan.measures]
+    return pd.DataFrame(rows, columns=columns)
+
+
+def measure_at(plan: Plan, departure_jd: float, arrival_jd: float) -> dict[str, float]:
+    """Every measure of the route between two epochs, which need not be on the grid."""
+    ends = [
+        _state_at(plan, encounter, jd) for encounter, jd in ((0, departure_jd), (-1, arrival_jd))
+    ]
+    earth = _earth_at(plan, ends[1].jd)
+    cells, _ = fly_between(plan, ends[0], ends[1], earth)
+    return {name: float(np.ravel(measure.compute(cells))[0]) for name, measure in plan.measures.items()}
+
+
+def _state_at(plan: Plan, encounter: int, jd: float) -> StateTable:
+    from porkgrid.sky.states import state_table
+
+    return state_table(plan.ephemeris, plan.tables[encounter].body, np.array([jd]))
+
+
+def _earth_at(plan: Plan, jd: np.ndarray) -> np.ndarray:
+    from porkgrid.sky.bodies import find_body
+
+    return plan.ephemeris.states(find_body("earth", {}), jd)[0]

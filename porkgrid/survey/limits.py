@@ -1,0 +1,105 @@
+"""What forbids a cell: the limits of the scenario, and the reasons for which a leg cannot be flown.
+
+Each cell gets a word of bits, `blocked_by`; the cell is allowed where the word is 0.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+
+import numpy as np
+
+from porkgrid.physics.lambert import BAD_INPUT, NO_PLANE, NO_TRANSFER, NOT_AFTER
+from porkgrid.scenario import Limit
+from porkgrid.survey.cells import Cells
+from porkgrid.survey.measures import Measure
+
+# Bits 0 to 2 say why there is no flight at all; the limits follow in the scenario's order.
+REASONS = {
+    "arrival_before_departure": "arrival not after departure",
+    "plane_undefined": "transfer plane undefined (0° or 180°)",
+    "no_transfer": "no such transfer",
+}
+_REASON_OF_STATUS = {NOT_AFTER: 0, NO_PLANE: 1, NO_TRANSFER: 2, BAD_INPUT: 2}
+
+
+@dataclass(frozen=True)
+class Bound:
+    """A limit on one measure; either end may be open."""
+
+    measure: Measure
+    least: float | None
+    most: float | None
+
+    @property
+    def title(self) -> str:
+        """The limit in words, such as "C3 at most 25 km²/s²"."""
+        return f"{_plain(self.measure)} {self._range()}{_unit(self.measure)}"
+
+    def _range(self) -> str:
+        if self.least is None:
+            return f"at most {self.most:g}"
+        if self.most is None:
+            return f"at least {self.least:g}"
+        return f"{self.least:g} to {self.most:g}".replace("-", "−")
+
+    def forbids(self, values: np.ndarray) -> np.ndarray:
+        """Where values lie outside; NaN is never inside."""
+        inside = np.ones(values.shape, dtype=bool)
+        if self.least is not None:
+            inside &= values >= self.least
+        if self.most is not None:
+            inside &= values <= self.most
+        return ~inside
+
+    def excess(self, values: np.ndarray) -> np.ndarray:
+        """How far values lie outside, in the measure's unit; 0 inside."""
+        below = 0.0 if self.least is None else np.maximum(self.least - values, 0.0)
+        above = 0.0 if self.most is None else np.maximum(values - self.most, 0.0)
+        return np.maximum(below, above)
+
+
+def bounds_of(limits: Mapping[str, Limit], measures: Mapping[str, Measure]) -> tuple[Bound, ...]:
+    """The scenario's limits, each with the measure it bounds."""
+    return tuple(Bound(measures[name], limit.min, limit.max) for name, limit in limits.items())
+
+
+def flag_names(bounds: tuple[Bound, ...]) -> list[str]:
+    """Names of the bits of `blocked_by`, lowest first."""
+    return [*REASONS, *(bound.measure.name for bound in bounds)]
+
+
+def flag_titles(bounds: tuple[Bound, ...]) -> list[str]:
+    """The bits of `blocked_by` in words, lowest first."""
+    return [*REASONS.values(), *(bound.title for bound in bounds)]
+
+
+def blocked_by(cells: Cells, bounds: tuple[Bound, ...]) -> np.ndarray:
+    """(n, m) uint32: a bit per reason or limit that forbids the cell.
+
+    A cell with no flight has the bit of its reason only: its measures are not numbers to be limited.
+    """
+    status = cells.status
+    word = np.zeros(status.shape, dtype=np.uint32)
+    for code, bit in _REASON_OF_STATUS.items():
+        word |= np.where(status == code, np.uint32(1 << bit), np.uint32(0))
+    flown = word == 0
+    for bit, bound in enumerate(bounds, start=len(REASONS)):
+        outside = bound.forbids(bound.measure.compute(cells)) & flown
+        word |= np.where(outside, np.uint32(1 << bit), np.uint32(0))
+    return word
+
+
+def _plain(measure: Measure) -> str:
+    """The symbol as plain text."""
+    text = measure.symbol
+    for mathtext, plain in (("$C_3$", "C3"), (r"$v_\infty$", "v∞"), (r"$\Delta v$", "Δv"), ("$L_s$", "Ls")):
+        text = text.replace(mathtext, plain)
+    return text
+
+
+def _unit(measure: Measure) -> str:
+    if measure.unit == "1":
+        return ""
+    return "°" if measure.unit == "deg" else f" {measure.unit}"

@@ -1,0 +1,138 @@
+"""What a sweep will do, settled before it starts: tables, leg options, measures, limits and tiles."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass
+from functools import cached_property
+
+import numpy as np
+
+from porkgrid.scenario import Orbit, Parking, Scenario
+from porkgrid.sky.bodies import Body, find_body
+from porkgrid.sky.kernel import Ephemeris, open_ephemeris
+from porkgrid.sky.states import StateTable, state_table
+from porkgrid.survey.cells import ApsisOrbit
+from porkgrid.survey.legs import LegOption, leg_options
+from porkgrid.survey.limits import Bound, bounds_of
+from porkgrid.survey.measures import Measure, default_rank, features_of, measures_for
+
+# A tile is a chunk of the store: 2^17 cells keep a tile's arrays at a megabyte each.
+TILE_COLUMNS = 1024
+TILE_CELLS = 2**17
+
+
+@dataclass(frozen=True)
+class Tile:
+    """A block of the grid that is computed and written as a whole."""
+
+    number: int
+    rows: slice
+    columns: slice
+
+    @property
+    def cells(self) -> int:
+        """How many cells it holds."""
+        return (self.rows.stop - self.rows.start) * (self.columns.stop - self.columns.start)
+
+
+@dataclass(frozen=True, eq=False)
+class Plan:
+    """A scenario with everything looked up that its cells need."""
+
+    scenario: Scenario
+    ephemeris: Ephemeris
+    tables: tuple[StateTable, ...]  # one per encounter
+    earth_at_arrival: np.ndarray  # (3, m) km
+    options: tuple[tuple[LegOption, ...], ...]  # per leg
+    parking: ApsisOrbit | None
+    capture: ApsisOrbit | None
+    measures: dict[str, Measure]  # all that the route has
+    stored: tuple[str, ...]  # those that the survey keeps
+    bounds: tuple[Bound, ...]
+    rank_by: str
+    rank_sign: float  # +1: less is better; −1: more is better
+
+    @property
+    def shape(self) -> tuple[int, int]:
+        """Departure dates × arrival dates."""
+        return len(self.tables[0].jd), len(self.tables[-1].jd)
+
+    @property
+    def chunks(self) -> tuple[int, int]:
+        """Rows and columns of a whole tile."""
+        n, m = self.shape
+        columns = min(m, TILE_COLUMNS)
+        return min(n, max(1, TILE_CELLS // columns)), columns
+
+    @cached_property
+    def tiles(self) -> tuple[Tile, ...]:
+        """The tiles in order of number; the same for every machine and every number of workers."""
+        return tuple(Tile(number, *block) for number, block in enumerate(_blocks(self.shape, self.chunks)))
+
+    @property
+    def route(self) -> str:
+        """The bodies in flying order, "Earth → Mars"; those moved by elements say so."""
+        return " → ".join(
+            body.title if body.elements is None else f"{body.title} (two-body elements)"
+            for body in (table.body for table in self.tables)
+        )
+
+
+def make_plan(scenario: Scenario) -> Plan:
+    """Look up everything a sweep of the scenario needs. RequestError where the sky has no such states."""
+    ephemeris = open_ephemeris(scenario.kernels)
+    extra = scenario.own_bodies
+    bodies = [find_body(encounter.body, extra) for encounter in scenario.encounters]
+    tables = tuple(
+        state_table(ephemeris, body, encounter.epochs_jd())
+        for body, encounter in zip(bodies, scenario.encounters, strict=True)
+    )
+    first, last = scenario.encounters[0], scenario.encounters[-1]
+    features = features_of(bodies, first.parking is not None, last.capture is not None)
+    measures = measures_for(len(scenario.legs), features)
+    rank_by = scenario.rank.by or default_rank(features)
+    earth, _ = ephemeris.states(find_body("earth", {}), tables[-1].jd)
+    return Plan(
+        scenario=scenario,
+        ephemeris=ephemeris,
+        tables=tables,
+        earth_at_arrival=earth,
+        options=tuple(tuple(leg_options(leg.max_revs, leg.retrograde)) for leg in scenario.legs),
+        parking=_apsides(first.parking, bodies[0]),
+        capture=_apsides(last.capture, bodies[-1]),
+        measures=measures,
+        stored=_stored(scenario, measures, rank_by),
+        bounds=bounds_of(scenario.limits, measures),
+        rank_by=rank_by,
+        rank_sign=1.0 if scenario.rank.order == "least" else -1.0,
+    )
+
+
+def _stored(scenario: Scenario, measures: dict[str, Measure], rank_by: str) -> tuple[str, ...]:
+    """The measures to keep: those asked for, and always the epochs, the limited and the ranked."""
+    if scenario.measures is None:
+        return tuple(measures)
+    wanted = {*scenario.measures, *scenario.limits, rank_by, "departure_epoch_jd_tdb", "arrival_epoch_jd_tdb"}
+    return tuple(name for name in measures if name in wanted)
+
+
+def _apsides(orbit: Orbit | None, body: Body) -> ApsisOrbit | None:
+    if orbit is None:
+        return None
+    assert body.radius_km is not None  # admit.load_scenario refuses an orbit about a body without a radius
+    inclination = orbit.inclination_deg if isinstance(orbit, Parking) else None
+    return ApsisOrbit(
+        body.radius_km + orbit.periapsis_altitude_km,
+        body.radius_km + orbit.apoapsis_altitude_km,
+        None if inclination is None else float(np.radians(inclination)),
+    )
+
+
+def _blocks(shape: tuple[int, int], chunks: tuple[int, int]) -> Iterator[tuple[slice, slice]]:
+    for top in range(0, shape[0], chunks[0]):
+        for left in range(0, shape[1], chunks[1]):
+            yield (
+                slice(top, min(top + chunks[0], shape[0])),
+                slice(left, min(left + chunks[1], shape[1])),
+            )

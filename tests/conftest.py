@@ -1,0 +1,6 @@
+"""Let tests import the slow, exact reference solvers in tests/reference."""
+
+import sys
+from pathlib import Path
+
+sys.path.insert(0, str(Path(__file__).parent / "reference"))

@@ -1,0 +1,136 @@
+"""Grids that look like a porkchop, from closed formulas: two lobes with a ridge between them."""
+
+from __future__ import annotations
+
+import numpy as np
+import pandas as pd
+import xarray as xr
+
+from porkgrid.survey.view import DayBests, FlagShare
+
+MASKS = {"arrival_before_departure": 1, "plane_undefined": 2, "no_transfer": 4}
+REASONS = ["arrival before departure", "transfer plane undefined", "no transfer"]
+
+
+def dates(first: str, count: int, step_days: float = 1.0) -> np.ndarray:
+    ms = np.round(np.arange(count) * step_days * 86_400_000).astype("timedelta64[ms]")
+    return np.datetime64(first, "ms") + ms
+
+
+def porkchop(
+    departure: np.ndarray,
+    arrival: np.ndarray,
+    limits: dict[str, tuple[str, np.ndarray]] | None = None,
+    c3_max: float | None = 25.0,
+    **attrs: str,
+) -> xr.Dataset:
+    """A grid with c3, v_inf_arrival, dla and tof; `limits` adds further limits: name -> (title, forbidden cells)."""
+    d = (departure - np.datetime64("2028-12-01", "ms")).astype(float)[:, None] / 86_400_000
+    tof = (arrival[None, :] - departure[:, None]).astype(float) / 86_400_000
+    season = (d + 390.0) % 780.0 - 390.0
+    long_way = 8.9 + ((season + 2) / 16.0) ** 2 + ((tof - 310 + 0.35 * season) / 30.0) ** 2
+    short_way = 9.6 + ((season - 4) / 15.0) ** 2 + ((tof - 205 + 0.45 * season) / 22.0) ** 2
+    ridge = 400.0 * np.exp(-(((tof - 256 + 0.5 * season) / 9.0) ** 2))
+    c3 = np.minimum(long_way, short_way) + ridge
+    v_inf = 2.6 + np.abs(tof - 290 + 0.3 * season) / 60.0 + ridge / 200.0
+    dla = 12.0 + 0.35 * season + 0.05 * (tof - 260)
+    c3[tof <= 0] = v_inf[tof <= 0] = dla[tof <= 0] = np.nan
+
+    flags = [(name, title, np.zeros(c3.shape, bool)) for name, title in zip(MASKS, REASONS, strict=True)]
+    flags[0] = (*flags[0][:2], tof <= 0)
+    if c3_max is not None:
+        flags.append(("c3_km2_s2", f"C3 at most {c3_max:g} km²/s²", ~(c3 <= c3_max)))
+    flags += [(name, title, forbidden) for name, (title, forbidden) in (limits or {}).items()]
+    bits = sum(np.where(bad, np.uint32(1 << i), np.uint32(0)) for i, (_, _, bad) in enumerate(flags))
+    bits = np.where(tof <= 0, np.uint32(1), bits).astype(np.uint32)
+
+    both = ("departure", "arrival")
+
+    def measure(values: np.ndarray, unit: str, symbol: str, meaning: str) -> tuple:
+        return both, values.astype(np.float32), {"units": unit, "symbol": symbol, "long_name": meaning}
+
+    return xr.Dataset(
+        {
+            "c3_km2_s2": measure(c3, "km²/s²", "$C_3$", "departure energy"),
+            "v_inf_arrival_km_s": measure(v_inf, "km/s", r"arrival $v_\infty$", "arrival excess speed"),
+            "dla_deg": measure(dla, "deg", "DLA", "declination of the launch asymptote"),
+            "tof_days": measure(tof, "days", "flight time", "time of flight"),
+            "arrival_mars_ls_deg": (
+                ("arrival",),
+                ((np.arange(arrival.size) * 0.9 + 200) % 360).astype(np.float32),
+                {"units": "deg", "symbol": r"Mars $L_s$ at arrival", "long_name": "season"},
+            ),
+            "blocked_by": (
+                both,
+                bits,
+                {
+                    "flag_masks": [1 << i for i in range(len(flags))],
+                    "flag_meanings": " ".join(name for name, _, _ in flags),
+                    "flag_titles": [title for _, title, _ in flags],
+                },
+            ),
+        },
+        coords={"departure": departure, "arrival": arrival},
+        attrs={
+            "title": "Tern relay to Mars, 2028",
+            "route": "Earth → Mars",
+            "rank_by": "c3_km2_s2",
+            "rank_order": "least",
+            "kernel": "DE440",
+            "porkgrid": "0.1.0",
+            "caution": "Patched conics for early design: confirm any date with a full-force trajectory before use.",
+            **attrs,
+        },
+    )
+
+
+def usual(n: int = 124, m: int = 335, **changes: object) -> xr.Dataset:
+    """The survey of the scenario in the design page, with three limits."""
+    departure, arrival = dates("2028-10-01", n, 150 / n), dates("2029-04-01", m, 400 / m)
+    free = porkchop(departure, arrival)
+    dla, tof = free["dla_deg"].values, free["tof_days"].values
+    limits = {
+        "dla_deg": ("DLA from −28.5 to 28.5 deg", np.abs(dla) > 28.5),
+        "tof_days": ("flight time at most 340 days", tof > 340),
+    }
+    return porkchop(departure, arrival, **{"limits": limits, **changes})  # type: ignore[arg-type]
+
+
+def bests_of(view: xr.Dataset, of: str, order: str = "least") -> DayBests:
+    values = np.broadcast_to(
+        view[of].values if view[of].ndim == 2 else view[of].values[None, :], view["blocked_by"].shape
+    )
+    sign = 1.0 if order == "least" else -1.0
+    worse = np.where((view["blocked_by"].values == 0) & np.isfinite(values), sign * values, np.inf)
+
+    def best(axis: int) -> np.ndarray:
+        least = worse.min(axis=axis)
+        return np.where(np.isfinite(least), sign * least, np.nan)
+
+    return DayBests(view["departure"].values, best(1), view["arrival"].values, best(0))
+
+
+def candidates_of(view: xr.Dataset, of: str, keep: int, apart_days: float = 10.0) -> pd.DataFrame:
+    """The best allowed cells, greedily kept apart, as a survey's candidates table."""
+    values = np.where(view["blocked_by"].values == 0, view[of].values, np.nan)
+    departure, arrival = view["departure"].values, view["arrival"].values
+    rows: list[dict] = []
+    kept: list[tuple[np.datetime64, np.datetime64]] = []
+    apart = np.timedelta64(round(apart_days * 86_400_000), "ms")
+    for flat in np.argsort(values, axis=None):
+        i, j = np.unravel_index(flat, values.shape)
+        if len(rows) == keep or np.isnan(values[i, j]):
+            break
+        if all(abs(departure[i] - a) >= apart or abs(arrival[j] - b) >= apart for a, b in kept):
+            kept.append((departure[i], arrival[j]))
+            rows.append({"rank": len(rows) + 1, "departure": str(departure[i].astype("datetime64[D]")),
+                         "arrival": str(arrival[j].astype("datetime64[D]")), of: float(values[i, j])})  # fmt: skip
+    return pd.DataFrame(rows, columns=["rank", "departure", "arrival", of])
+
+
+def shares_of(view: xr.Dataset) -> list[FlagShare]:
+    bits, attrs = view["blocked_by"].values, view["blocked_by"].attrs
+    return [
+        FlagShare(title, float(np.mean((bits & mask) != 0)), float(np.mean(bits == mask)))
+        for title, mask in zip(attrs["flag_titles"], attrs["flag_masks"], strict=True)
+    ]

@@ -1,0 +1,169 @@
+"""Judge Lambert answers by the millions: flight time and shape of the conic that the velocities describe.
+
+Everything is evaluated in numpy longdouble (64-bit mantissa, eps 1.1e-19) from the vectors themselves, in the
+variables of Lancaster, Blanchard and Gooding: lambda² = 1 - c/s, x² = 1 - s/2a, y² = 1 - lambda²(1 - x²).
+The velocities give x through quantities in which nothing cancels, so the judge's own rounding is far below
+that of a double; what rounding the *answer* to doubles costs is computed beside each residual.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+LONG = np.longdouble
+PI = LONG(4) * np.arctan(LONG(1))
+HALF_ULP = 2.0**-53
+LEAST_TIME_STEPS = 16  # Newton needs 6; the rest are for the few that must bisect first (λ near 1)
+SERIES_TERMS = 22  # S1 < 0.09 there: (0.09 · 1.1)^22 < 1e-22
+
+
+@dataclass(frozen=True, eq=False)
+class Shape:
+    """Geometry of n problems, each (n,) longdouble: radii, chord, semiperimeter, lambda, c/s, normal (n, 3)."""
+
+    n1: np.ndarray
+    n2: np.ndarray
+    chord: np.ndarray
+    s: np.ndarray
+    lam: np.ndarray
+    c_over_s: np.ndarray
+    normal: np.ndarray
+    sine: np.ndarray  # |sin θ|
+
+    def __getitem__(self, chosen) -> Shape:
+        return Shape(*(getattr(self, name)[chosen] for name in self.__dataclass_fields__))
+
+
+def shape(r1: np.ndarray, r2: np.ndarray, pole: np.ndarray) -> Shape:
+    """Measure the triangle; lambda > 0 where the motion about the pole turns through less than 180°."""
+    r1, r2 = np.asarray(r1, LONG), np.asarray(r2, LONG)
+    n1, n2, chord = _norm(r1), _norm(r2), _norm(r2 - r1)
+    s = (n1 + n2 + chord) / 2
+    cross, dot = np.cross(r1, r2), _dot(r1, r2)
+    area = _norm(cross)
+    # n1·n2 + r1·r2 without cancellation on either side of 90°
+    both = np.where(dot > 0, n1 * n2 + dot, area**2 / (n1 * n2 - np.minimum(dot, 0)))
+    sign = np.where(_dot(cross, np.asarray(pole, LONG)) < 0, LONG(-1), LONG(1))
+    normal = sign[:, None] * cross / area[:, None]
+    return Shape(n1, n2, chord, s, sign * np.sqrt(both / 2) / s, chord / s, normal, area / (n1 * n2))
+
+
+def time_scale(g: Shape, gm: float) -> np.ndarray:
+    """Seconds per unit of T: sqrt(s³ / 2 gm)."""
+    return np.sqrt(g.s**3 / (2 * LONG(gm)))
+
+
+def time_of_flight(x: np.ndarray, g: Shape, revs: np.ndarray) -> np.ndarray:
+    """T(x) = η³ G + 2 λ η + N π / (1 - x²)^(3/2), with η = y - λx and G = (2/3) 2F1(3, 1; 5/2; sin²(ψ/2)).
+
+    Battin's expression, G in closed form away from ψ = 0; on hyperbolas with λ < 0, where its terms cancel,
+    Lancaster and Blanchard's.  Keeps the dtype of x if that is the wider one.
+    """
+    x = np.asarray(x)
+    lam, c_s = g.lam, g.c_over_s
+    w = (1 - x) * (1 + x)
+    y = np.sqrt(c_s + (lam * x) ** 2)
+    eta = np.where(lam * x > 0, c_s / (y + np.abs(lam * x)), y - lam * x)
+    sine = eta * np.sqrt(np.abs(w))
+    cosine = x * y + lam * w
+    psi = np.where(w > 0, np.arctan2(sine, cosine), np.arcsinh(sine))
+    with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
+        bulge = np.where(w > 0, psi - sine * cosine, sine * np.sqrt(1 + sine**2) - psi) / sine**3
+        near = np.abs(psi) < 0.6
+        bulge[near] = _series(sine[near] ** 2 * np.sign(w[near]), cosine[near])
+        lancaster = (psi / np.sqrt(-w) - x + lam * y) / w
+        turns = np.where(revs > 0, revs * x.dtype.type(PI) / (np.maximum(w, 0) * np.sqrt(np.abs(w))), 0)
+    return np.where((lam < 0) & (x > 1.5), lancaster, eta**3 * bulge + 2 * lam * eta) + turns
+
+
+def _series(signed_sine2: np.ndarray, cosine: np.ndarray) -> np.ndarray:
+    """(2/3) 2F1(3, 1; 5/2; z) at z = sin²(ψ/2), negative on hyperbolas; |z| < 0.1."""
+    z = signed_sine2 / (2 * (1 + cosine))
+    total = np.ones_like(z)
+    for j in reversed(range(SERIES_TERMS)):
+        total = 1 + total * z * (z.dtype.type(3 + j) / z.dtype.type(2.5 + j))
+    return total * 2 / 3
+
+
+def least_time(g: Shape, revs: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+    """Least T for N >= 1 revolutions, longdouble, and the x where it is.
+
+    Newton on dT/dx = 0 in doubles (T is flat there), kept inside the interval in which dT/dx changes sign.
+    """
+    rough = Shape(*(np.asarray(getattr(g, name), float) for name in g.__dataclass_fields__))
+    lam3, outside = rough.lam**3, 1 - rough.lam**2
+    low, high = np.full(g.s.shape, -1.0), np.full(g.s.shape, 1.0)
+    x = np.zeros(g.s.shape)
+    for _ in range(LEAST_TIME_STEPS):
+        t = time_of_flight(x, rough, revs)
+        y, w = np.sqrt(rough.c_over_s + (rough.lam * x) ** 2), (1 - x) * (1 + x)
+        slope = (3 * t * x - 2 + 2 * lam3 * x / y) / w
+        curvature = (3 * t + 5 * x * slope + 2 * outside * lam3 / y**3) / w
+        low, high = np.where(slope < 0, x, low), np.where(slope < 0, high, x)
+        x = x - slope / curvature
+        x = np.where((x > low - 1e-9) & (x < high + 1e-9), x, (low + high) / 2)  # rounding may step over a root
+    return time_of_flight(np.asarray(x, LONG), g, revs), x
+
+
+def recover_x(g: Shape, gm: float, r1, r2, v1, v2) -> tuple[np.ndarray, np.ndarray]:
+    """Find x from the velocities, and how much half an ulp in each of their components can move it.
+
+    With γ = sqrt(gm s/2), ρ = (|r1| - |r2|)/c, σ² = 1 - ρ²:   r1·v1 - r2·v2 = 2γ(λy - x),
+    r1·v1 + r2·v2 = -2γρ(λy + x),   |r1 × v1| = γσ(y + λx).  The first always serves; of the other two, the
+    one whose factor is not small.
+    """
+    r1, r2, v1, v2 = (np.asarray(a, LONG) for a in (r1, r2, v1, v2))
+    gamma = np.sqrt(LONG(gm) * g.s / 2)
+    rho = (g.n1 - g.n2) / g.chord
+    sigma = np.sqrt(2 * g.n1 * g.n2 * _one_minus_cosine(g, r1, r2)) / g.chord
+    d = (_dot(r1, v1) - _dot(r2, v2)) / (2 * gamma)
+    d_error = (_dot(np.abs(r1), np.abs(v1)) + _dot(np.abs(r2), np.abs(v2))) / (2 * gamma) * HALF_ULP
+    with np.errstate(divide="ignore", invalid="ignore"):
+        e = -(_dot(r1, v1) + _dot(r2, v2)) / (2 * gamma * rho)
+        h = _dot(np.cross(r1, v1), g.normal) / (gamma * sigma)
+        h_error = g.n1 * _norm(v1) / (gamma * sigma) * HALF_ULP
+        by_radial = np.abs(rho) > sigma
+        x = np.where(by_radial, (e - d) / 2, (g.lam * h - d) / (1 + g.lam**2))
+        error = np.where(
+            by_radial, d_error * (1 + 1 / np.abs(rho)) / 2, (np.abs(g.lam) * h_error + d_error) / (1 + g.lam**2)
+        )
+    return x, error
+
+
+def _one_minus_cosine(g: Shape, r1: np.ndarray, r2: np.ndarray) -> np.ndarray:
+    cosine = _dot(r1, r2) / (g.n1 * g.n2)
+    return np.where(cosine > 0, g.sine**2 / (1 + np.abs(cosine)), 1 - cosine)
+
+
+def time_residual(g: Shape, x: np.ndarray, x_error: np.ndarray, revs, tof, gm: float):
+    """Relative flight-time error of x, and the part of it that rounding the velocities explains."""
+    wanted = np.asarray(tof, LONG) / time_scale(g, gm)
+    found = time_of_flight(x, g, revs)
+    moved = [np.abs(time_of_flight(x + step, g, revs) - found) for step in (x_error, -x_error)]
+    return np.abs(found / wanted - 1), np.fmax(*moved) / wanted
+
+
+def velocities(g: Shape, x: np.ndarray, gm: float, r1, r2) -> tuple[np.ndarray, np.ndarray]:
+    """Velocities (n, 3) longdouble of the conic x through both points: Izzo 2015, the last equations."""
+    gamma = np.sqrt(LONG(gm) * g.s / 2)
+    rho = (g.n1 - g.n2) / g.chord
+    sigma = np.sqrt(2 * g.n1 * g.n2 * _one_minus_cosine(g, np.asarray(r1, LONG), np.asarray(r2, LONG))) / g.chord
+    y = np.sqrt(g.c_over_s + (g.lam * x) ** 2)
+    # (y + λx) = (c/s)/(y - λx): take the form that does not cancel
+    total = np.where(g.lam * x < 0, g.c_over_s / (y + np.abs(g.lam * x)), y + g.lam * x)
+    out = []
+    for r, n, sign in ((r1, g.n1, 1), (r2, g.n2, -1)):
+        radial = gamma * (sign * (g.lam * y - x) - rho * (g.lam * y + x)) / n
+        unit = np.asarray(r, LONG) / n[:, None]
+        out.append(radial[:, None] * unit + (gamma * sigma * total / n)[:, None] * np.cross(g.normal, unit))
+    return out[0], out[1]
+
+
+def _dot(a: np.ndarray, b: np.ndarray) -> np.ndarray:
+    return (a * b).sum(-1)
+
+
+def _norm(a: np.ndarray) -> np.ndarray:
+    return np.sqrt(_dot(a, a))
