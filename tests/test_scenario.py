@@ -214,7 +214,12 @@ def test_bodies_by_elements_and_by_number_are_accepted(read):
         ("e = 0.1", "e = inf", "e", "finite"),
         ("i_deg = 3", "i_deg = 181", "i_deg", "180 or less"),
         ("mean_anomaly_deg = 30", "", "perihelion", "mean_anomaly_deg"),
-        ("mean_anomaly_deg = 30", "mean_anomaly_deg = 30\nperihelion = 2030-01-01", "mean_anomaly_deg", "one"),
+        (
+            "mean_anomaly_deg = 30",
+            "mean_anomaly_deg = 30\nperihelion = 2030-01-01",
+            "mean_anomaly_deg",
+            "one",
+        ),
         ("epoch = 2030-01-01", "", "epoch", "missing"),
         ("epoch = 2030-01-01", "epoch = 2462502.5", "epoch", "bare date"),
         ("e = 0.1", "e = 0.1\nnaif_id = 77", "naif_id", "one or the other"),
@@ -233,7 +238,13 @@ def test_a_body_of_nothing_is_refused(faults):
 
 @pytest.mark.parametrize(
     ("name", "says"),
-    [("earth", "built-in"), ("MARS", "built-in"), ('"4"', "not a name"), ('""', "not a name"), ('" a"', "blanks")],
+    [
+        ("earth", "built-in"),
+        ("MARS", "built-in"),
+        ('"4"', "not a name"),
+        ('""', "not a name"),
+        ('" a"', "blanks"),
+    ],
 )
 def test_names_of_bodies_that_would_mislead_are_refused(read, name, says):
     assert any(says in fault.text for fault in read(with_body(CLOSED, name)).faults)
@@ -366,7 +377,12 @@ def test_numbers_and_nesting_that_python_cannot_take_are_faults(read):
         ("2030-03-31", "2030-03-31\n[leg]", "leg", "double brackets"),
         ("2030-03-31", "2030-03-31\n[limits]\ntof_days = 300", "limits.tof_days", "{ max = 25 }"),
         ("2030-03-31", "2030-03-31\n[limits]\ntof_days = {}", "limits.tof_days.max", "neither min nor max"),
-        ("2030-03-31", "2030-03-31\n[limits.tof_days]\nmin = 2\nmax = 1", "limits.tof_days.max", "below min, 2"),
+        (
+            "2030-03-31",
+            "2030-03-31\n[limits.tof_days]\nmin = 2\nmax = 1",
+            "limits.tof_days.max",
+            "below min, 2",
+        ),
         ("2030-03-31", "2030-03-31\n[limits.tof_days]\nmost = 1", "limits.tof_days.most", "no such key"),
         ("2030-03-31", "2030-03-31\n[limits.tof_days]\nmax = inf", "limits.tof_days.max", "finite"),
         ("2030-03-31", '2030-03-31\n[rank]\norder = "lest"', "rank.order", "must be 'least' or 'most'"),

@@ -31,14 +31,16 @@ from porkgrid.figures.placement import Box, Room
 from porkgrid.figures.raster import raster_for
 from porkgrid.figures.strips import draw_arrival_strip, draw_departure_strip
 from porkgrid.figures.style import SMALL_PT, SOFT_INK, new_slide
-from porkgrid.figures.text import one_line, put, shorten, wrap
+from porkgrid.figures.text import one_line, put, wrap
 from porkgrid.survey.view import DayBests
 
 PANEL_BOX = Box(1.00, 2.20, 7.80, 6.15)
 _DEPARTURE_BOX = Box(1.00, 0.95, 7.80, 1.85)
 _ARRIVAL_BOX = Box(8.27, 2.20, 9.17, 6.15)
 _COLUMN = (9.70, 13.08, 6.34, 0.52)
+_CAPTION_IN = 1.45
 _FLIGHT_TIME = "tof_days"
+_WORDS = {"least": "least", "most": "greatest"}
 
 
 def draw_chart(
@@ -49,7 +51,7 @@ def draw_chart(
     view: the survey's grid or every n-th row and column of it (dimensions departure, arrival; measures;
     `blocked_by`; attributes). day_bests: best allowed values of measure `of`, by day, at full resolution.
     candidates: columns departure and arrival, best first; may be empty. of: measure shown as bands of colour.
-    lines: measure shown as labelled lines, or None. Raises KeyError for a measure that the view does not hold.
+    lines: measure shown as labelled lines, or None. Raises KeyError for a measure that the view lacks.
     """
     measured, ground = read_measure(view, of), read_ground(view)
     scale = value_scale(_values_that_matter(measured, ground), _order(view, of))
@@ -68,7 +70,7 @@ def draw_chart(
     if lines != _FLIGHT_TIME:
         draw_flight_time_guides(panel, sheet, flight[allowed] if allowed.any() else flight[flight > 0.0])
     if len(candidates):
-        draw_candidates(panel, sheet, candidates, room)
+        draw_candidates(panel, sheet, candidates, days, allowed, room)
     second = None if lines is None else read_measure(view, lines)
     if second is not None:
         draw_lines(panel, sheet, second, days, allowed if allowed.any() else flight > 0.0, room)
@@ -78,7 +80,7 @@ def draw_chart(
     )
     draw_arrival_strip(figure, sheet, panel, _ARRIVAL_BOX, day_bests.arrival, day_bests.arrival_best, scale)
     _name_strips(sheet, measured, _order(view, of))
-    _draw_column(sheet, measured, scale, ground, second, candidates)
+    _draw_column(sheet, measured, scale, ground, second, candidates, view.attrs.get("rank_by") == of)
     return figure
 
 
@@ -98,13 +100,13 @@ def _headline(
 ) -> list[str]:
     """Return the best value with its departure date, and how much of the grid is allowed."""
     best = np.asarray(bests.departure_best, dtype=float)
-    share = f"about {100.0 * np.mean(ground.kind == ALLOWED):.0f} % of the grid is allowed"
     if scale is None or not np.isfinite(best).any():
-        return [share if (ground.kind == ALLOWED).any() else "no cell of the grid is allowed"]
+        return [ground.allowed_text]
     at = int(np.nanargmin(best) if order == "least" else np.nanargmax(best))
     value = measured.with_unit(value_text(float(best[at]), fine_step(scale)))
-    word = "least" if order == "least" else "greatest"
-    return [f"{word} allowed {measured.label} {value}, leaving {iso_day(bests.departure[at])}", share]
+    word = _WORDS[order]
+    leaving = iso_day(bests.departure[at])
+    return [f"{word} allowed {measured.label} {value}, leaving {leaving}", ground.allowed_text]
 
 
 def fine_step(scale: Scale) -> float:
@@ -124,16 +126,12 @@ def _state_what_is_missing(panel: Panel, sheet: Axes, measured: Measured, ground
 
 
 def _name_strips(sheet: Axes, measured: Measured, order: str) -> None:
-    """Write what the strips show: beside the lower one, and under the one on the right."""
-    best = "least" if order == "least" else "greatest"
-    below = [*wrap(f"{best} {measured.title}", 1.30, SMALL_PT, 3), "of each arrival day"]
-    put(sheet, _ARRIVAL_BOX.left, 1.90, "\n".join(below), SMALL_PT, va="top", color=SOFT_INK)
-    height = _DEPARTURE_BOX.top - _DEPARTURE_BOX.bottom
-    names = (f"{best} {measured.label}", f"({measured.unit})" if measured.unit else "")
-    beside = "\n".join(shorten(name, height, SMALL_PT) for name in names if name)
-    middle = 0.5 * (_DEPARTURE_BOX.bottom + _DEPARTURE_BOX.top)
-    turned = {"rotation": 90, "ha": "center", "va": "center"}
-    put(sheet, 0.44, middle, beside, SMALL_PT, color=SOFT_INK, **turned)
+    """Write what the strips show, in the corner between them."""
+    what = wrap(f"{_WORDS[order]} {measured.title}", _CAPTION_IN, SMALL_PT, 2)
+    x, below = _ARRIVAL_BOX.left, _DEPARTURE_BOX.right + 0.12
+    put(sheet, x, 1.92, "\n".join([*what, "of each arrival day"]), SMALL_PT, va="top", color=SOFT_INK)
+    caption = "\n".join([*what, "of each departure day"])
+    put(sheet, below, 0.93, caption, SMALL_PT, va="bottom", color=SOFT_INK)
 
 
 def _draw_column(
@@ -143,12 +141,14 @@ def _draw_column(
     ground: Ground,
     second: Measured | None,
     candidates: pd.DataFrame,
+    ranked: bool,
 ) -> None:
     """Fill the right column: colour bar, key, candidates."""
     left, right, top, bottom = _COLUMN
     column = Column(sheet, left, right, top, bottom)
     if scale is not None:
-        draw_colour_bar(column, scale, measured)
+        better = {"least": "lower is better", "most": "higher is better"}[scale.order]
+        draw_colour_bar(column, scale, f"{measured.title}, {better}" if ranked else measured.title)
     if second is not None:
         column.line(second.title, color=LINE_INK, linewidth=0.9)
     if second is None or second.name != _FLIGHT_TIME:

@@ -35,7 +35,7 @@ def cell_edges(days: np.ndarray) -> np.ndarray:
 
 
 def date_ticks(first_day: float, last_day: float, most: int) -> tuple[np.ndarray, list[str]]:
-    """Return at most `most` (and if possible two or more) round dates in the range, in days, with ISO labels."""
+    """Return at most `most` round dates in the range, two or more if there are, as days and ISO labels."""
     span = last_day - first_day
     if span > 2.0:
         for step in _DAY_STEPS:
@@ -55,8 +55,9 @@ def date_ticks(first_day: float, last_day: float, most: int) -> tuple[np.ndarray
 
 def _hour_ticks(first_day: float, last_day: float, step: int) -> tuple[np.ndarray, list[str]]:
     hours = np.arange(np.ceil(first_day * 24.0 / step), np.floor(last_day * 24.0 / step) + 1.0) * step
-    dates = (hours.astype(np.int64)).astype("datetime64[h]")
-    return hours / 24.0, [f"{date}:00"[5:].replace("T", " ") for date in np.datetime_as_string(dates)]
+    iso = np.datetime_as_string(hours.astype(np.int64).astype("datetime64[h]"))
+    labels = [day if hour == "00" else f"{hour}:00" for day, hour in (d.split("T") for d in iso)]
+    return hours / 24.0, labels
 
 
 def _day_ticks(first_day: float, last_day: float, step: int) -> tuple[np.ndarray, list[str]]:

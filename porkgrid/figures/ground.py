@@ -34,6 +34,15 @@ class Ground:
     hatched: list[int]
     blocked: np.ndarray
 
+    @property
+    def allowed_text(self) -> str:
+        """Say how much of the grid is allowed, rounded: the cells may be a thinned grid's."""
+        percent = 100.0 * float(np.mean(self.kind == ALLOWED))
+        if percent in (0.0, 100.0):
+            return "the whole grid is allowed" if percent else "no cell of the grid is allowed"
+        about = "under 1" if percent < 1.0 else "over 99" if percent > 99.0 else f"about {percent:.0f}"
+        return f"{about} % of the grid is allowed"
+
     def hatch_of(self, limit: int) -> int | None:
         """Return which hatch limit number `limit` has, or None if it shares the common one."""
         return self.hatched.index(limit) if limit in self.hatched else None
@@ -65,8 +74,10 @@ def read_ground(view: xr.Dataset) -> Ground:
 
 
 def _most_seen(blocked: np.ndarray, masks: np.ndarray) -> list[int]:
-    """Return which limits get a hatch of their own, in scenario order: those that forbid the most cells alone,
-    then those that forbid the most with others."""
+    """Return which limits get a hatch of their own, in scenario order.
+
+    First those that forbid the most cells alone, then those that forbid the most with others.
+    """
     seen = [
         (np.count_nonzero(blocked == mask), np.count_nonzero(blocked & mask), -i)
         for i, mask in enumerate(masks)

@@ -1,6 +1,6 @@
 """Hatches as small pixel tiles. Painting them costs the same whatever the outline of the ground they cover.
 
-Vector hatching would need the outline of every kind of ground; on a large grid that is the slowest part of a chart.
+Vector hatching would need the outline of every kind of ground: on a large grid the slowest part of a chart.
 """
 
 from __future__ import annotations

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -18,8 +19,7 @@ _SWATCH_W, _SWATCH_H = 0.34, 0.15
 _TEXT_GAP = 0.10
 _ROW = line_height_in(SMALL_PT)
 _LEFT_PART = 0.68  # of the table's width, for numbers and dates; the rest is for values
-_CELL_DIGITS = (2, 13, 13, 6)  # wide, blanks included
-_CELL_RIGHTS = (0.1, 0.31, 0.55, _LEFT_PART)  # of the width, for the heads
+_GAP_DIGITS = 2
 _FIGURE_SPACE = "\u2007"  # as wide as a digit
 SWATCH_PX = (round(_SWATCH_H * PIXELS_PER_INCH), round(_SWATCH_W * PIXELS_PER_INCH))
 
@@ -69,10 +69,10 @@ class Column:
         self.y -= 0.06
 
 
-def draw_colour_bar(column: Column, scale: Scale, measured: Measured) -> None:
+def draw_colour_bar(column: Column, scale: Scale, heading: str) -> None:
     """Draw the bands of value side by side with their bounds; an arrow stands for all values worse still."""
     least = scale.order == "least"
-    column.heading(f"{measured.title}, {'lower' if least else 'higher'} is better")
+    column.heading(heading)
     arrow, height, top = 0.18, 0.19, column.y
     width = (column.width - arrow - 0.3) / (len(scale.levels) - 1)
     left = column.left + 0.08 + (0.0 if least else arrow)
@@ -120,27 +120,40 @@ def draw_candidate_table(
     value_room = (1.0 - _LEFT_PART) * column.width - 0.1
     head = shorten(measured.title, value_room, SMALL_PT) if measured.name in candidates else ""
 
-    _table_row(column, ("", "departure", "arrival", "days"), head, SOFT_INK)
+    form = "%Y-%m-%d" if (departures.dt.hour + arrivals.dt.hour == 0).all() else "%Y-%m-%dT%H"
+    rows = [
+        (str(i + 1), format(departure, form), format(arrival, form), f"{days:.0f}")
+        for i, (departure, arrival, days) in enumerate(zip(departures, arrivals, flights, strict=True))
+    ]
+    widths = (2, *(_GAP_DIGITS + len(cell) for cell in rows[0][1:3]), _GAP_DIGITS + 4) if rows else ()
+    _table_heads(column, widths, head)
     rule = column.y - 0.05
     add_line(column.sheet, [column.left, column.right], [rule, rule], color=FAINT_INK, linewidth=0.4)
     column.y = rule - 0.02
-    for i, (departure, arrival, days) in enumerate(zip(departures, arrivals, flights, strict=True)):
+    for i, cells in enumerate(rows):
         value = value_text(float(candidates[measured.name].iloc[i]), value_step) if head else ""
-        cells = (str(i + 1), f"{departure:%Y-%m-%d}", f"{arrival:%Y-%m-%d}", f"{days:.0f}")
-        _table_row(column, cells, value, INK)
+        _table_row(column, widths, cells, value)
     if shown < len(candidates):
         column.y -= _ROW
         rest = f"… and {len(candidates) - shown} more in the candidates table"
         put(column.sheet, column.left, column.y, rest, SMALL_PT, color=SOFT_INK)
 
 
-def _table_row(column: Column, cells: tuple[str, str, str, str], value: str, color: str) -> None:
-    """Write one row as few texts: those that are all digits are padded with blanks as wide as a digit."""
+def _table_heads(column: Column, widths: Sequence[int], value_head: str) -> None:
+    """Write the heads over the right edges of the cells, whose widths are given in digits."""
     column.y -= _ROW
-    rights = [column.left + share * column.width for share in _CELL_RIGHTS]
-    if cells[0]:
-        padded = [cell.rjust(width, _FIGURE_SPACE) for cell, width in zip(cells, _CELL_DIGITS, strict=True)]
-        cells = ("", "", "", "".join(padded))
-    for text, right in zip((*cells, value), (*rights, column.right - 0.05), strict=True):
-        if text:
-            put(column.sheet, right, column.y, text, SMALL_PT, color=color, ha="right")
+    digit = width_in("0", SMALL_PT)
+    right = column.left + _LEFT_PART * column.width
+    rights = right - digit * (sum(widths) - np.cumsum(widths))
+    for x, head in zip(rights, ("", "departure", "arrival", "days"), strict=False):
+        put(column.sheet, float(x), column.y, head, SMALL_PT, color=SOFT_INK, ha="right")
+    put(column.sheet, column.right - 0.05, column.y, value_head, SMALL_PT, color=SOFT_INK, ha="right")
+
+
+def _table_row(column: Column, widths: Sequence[int], cells: Sequence[str], value: str) -> None:
+    """Write one row as two texts: the cells are all digits, and padded with blanks as wide as a digit."""
+    column.y -= _ROW
+    right = column.left + _LEFT_PART * column.width
+    padded = "".join(cell.rjust(width, _FIGURE_SPACE) for cell, width in zip(cells, widths, strict=True))
+    put(column.sheet, right, column.y, padded, SMALL_PT, ha="right")
+    put(column.sheet, column.right - 0.05, column.y, value, SMALL_PT, ha="right")

@@ -1,4 +1,4 @@
-"""Which values a chart tells apart: round levels from the best value up to where the detail stops mattering."""
+"""Which values a chart tells apart: round levels from the best value to where detail stops mattering."""
 
 from __future__ import annotations
 
@@ -15,10 +15,10 @@ _FLOAT32_NOISE = 1e-6  # the store holds single precision; a smaller relative sp
 
 @dataclass(frozen=True, eq=False)
 class Scale:
-    """Bands of value: `levels` (n + 1,) ascending bound n bands; values worse than the last are one more band.
+    """Bands of value: `levels` (n + 1,) ascending bound n bands; all values worse than those are one more.
 
-    colours: (n + 1, 3) float RGB, band by band from the lowest value; for order "least" the band of worse values
-    comes last, for "most" it comes first.
+    colours: (n + 1, 3) float RGB, band by band from the lowest value; for order "least" the band of worse
+    values comes last, for "most" it comes first.
     """
 
     levels: np.ndarray
@@ -34,7 +34,7 @@ class Scale:
 
 
 def round_step(span: float, pieces: int) -> float:
-    """Return the smallest of 1, 2, 2.5, 5 times a power of ten that cuts the span into at most so many pieces."""
+    """Return the smallest of 1, 2, 2.5, 5 times a power of ten that cuts a span into so many pieces or fewer."""
     raw = span / pieces
     power = 10.0 ** np.floor(np.log10(raw))
     return float(next(power * step for step in _ROUND_STEPS if power * step >= raw * (1.0 - 1e-9)))
@@ -52,21 +52,30 @@ def round_levels(low: float, high: float, pieces: int) -> np.ndarray:
 
 
 def value_scale(values: np.ndarray, order: str) -> Scale | None:
-    """Choose the bands for a chart of these values (any shape; NaN and infinities left out); None if there are none.
+    """Choose the bands for a chart of these values, over the range that matters, from the best value on.
 
-    A porkchop has a deep, narrow best region and walls hundreds of times higher. The scale runs from the best value
-    four times as far as the best quarter of the cells reaches, and never beyond the best 95 %.
+    values: any shape; NaN and infinities are left out. Returns None if nothing is left.
     """
     finite = values[np.isfinite(values)].astype(float)
     if finite.size == 0:
         return None
     worse = finite if order == "least" else -finite
-    best, quarter, most = np.quantile(worse, [0.0, 0.25, 0.95])
-    reach = min(most, best + 4.0 * (quarter - best)) if quarter > best else most
+    best, reach = range_that_matters(worse)
     low, high = (best, reach) if order == "least" else (-reach, -best)
     levels = round_levels(low, high, _BANDS)
     colours = depth_colours(len(levels))
     return Scale(levels, colours if order == "least" else colours[::-1], order)
+
+
+def range_that_matters(values: np.ndarray) -> tuple[float, float]:
+    """Return the least of finite values and how far up their detail matters.
+
+    A porkchop has a deep, narrow best region and walls hundreds of times higher. The range runs four times as
+    far as the lowest quarter of the values reaches, and never beyond the lowest 95 %.
+    """
+    least, quarter, most = np.quantile(values, [0.0, 0.25, 0.95])
+    reach = min(most, least + 4.0 * (quarter - least)) if quarter > least else most
+    return float(least), float(reach)
 
 
 def value_text(value: float, step: float) -> str:

@@ -40,7 +40,7 @@ def draw_limit_map(view: xr.Dataset, shares: Sequence[FlagShare]) -> Figure:
     allowed = ground.kind == ALLOWED
 
     figure, sheet = new_slide()
-    draw_header(sheet, view, ["what forbids each pair of dates", _allowed_text(allowed)], ground.flags)
+    draw_header(sheet, view, ["what forbids each pair of dates", ground.allowed_text], ground.flags)
     draw_footer(sheet, view)
     panel = draw_panel(figure, PANEL_BOX, raster.limits, limit_pixels(raster, ground))
     mark_departure_dates(panel, panel.axes, bare=False)
@@ -50,12 +50,6 @@ def draw_limit_map(view: xr.Dataset, shares: Sequence[FlagShare]) -> Figure:
     _draw_key(column, ground)
     _draw_costs(column, ground, shares)
     return figure
-
-
-def _allowed_text(allowed: np.ndarray) -> str:
-    if not allowed.any():
-        return "no cell of the grid is allowed"
-    return f"about {100.0 * np.mean(allowed):.0f} % of the grid is allowed"
 
 
 def _draw_key(column: Column, ground: Ground) -> None:

@@ -1,7 +1,7 @@
 """Lines and areas added to axes whose limits are already set.
 
-`axes.plot` and `axes.add_patch` also choose a colour, convert units and work out new limits: several milliseconds
-a call, which for the hundred small marks of a slide is longer than drawing the grid.
+`axes.plot` and `axes.add_patch` also choose a colour, convert units and work out new limits: several
+milliseconds a call, which for the hundred small marks of a slide is longer than drawing the grid.
 """
 
 from __future__ import annotations
@@ -40,7 +40,7 @@ def add_rectangle(axes: Axes, left: float, bottom: float, width: float, height: 
 
 
 def add_pixels(axes: Axes, pixels: np.ndarray, extent: tuple[float, float, float, float]) -> None:
-    """Show (rows, columns, 3) uint8 pixels over left, right, bottom, top, one to one at the common resolution."""
+    """Show (rows, columns, 3) uint8 pixels over left, right, bottom, top; one to one in the PNG."""
     image = AxesImage(axes, extent=extent, origin="upper", interpolation="none")
     image.set_data(pixels)
     axes.add_artist(image)

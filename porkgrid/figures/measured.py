@@ -15,7 +15,11 @@ _SIGNS = {r"\Delta ": "Δ", r"\Delta": "Δ", r"\infty": "∞", r"\oplus": "⊕",
 
 @dataclass(frozen=True, eq=False)
 class Measured:
-    """values: (departure, arrival) float, NaN where unknown; label: "C3"; unit: "km²/s²", or "" for a pure number."""
+    """A measure on a grid.
+
+    values: (departure, arrival) float, NaN where unknown. label: as on axes, "C3". unit: "km²/s²", or "" for a
+    pure number.
+    """
 
     name: str
     values: np.ndarray

@@ -10,7 +10,7 @@ from matplotlib.axes import Axes
 from matplotlib.patheffects import withStroke
 
 from porkgrid.figures.dates import days_from_dates
-from porkgrid.figures.levels import round_levels, value_text
+from porkgrid.figures.levels import range_that_matters, round_levels, value_text
 from porkgrid.figures.marks import add_line, add_segments
 from porkgrid.figures.measured import Measured
 from porkgrid.figures.panel import Panel
@@ -24,6 +24,7 @@ _MARKER_IN = 0.205
 _POINTS_PER_INCH = 72.0
 _MOST_POINTS = 500  # a side, for contour lines; more cannot be seen
 _LINES = 7
+_ISLAND = 0.2  # share of the ground around a candidate
 
 
 def draw_lines(
@@ -41,8 +42,7 @@ def draw_lines(
     values = measured.values[seen & np.isfinite(measured.values)]
     if values.size == 0 or min(measured.values.shape) < 2:
         return
-    low, high = np.quantile(values, [0.02, 0.98])
-    levels = round_levels(float(low), float(high), _LINES)
+    levels = round_levels(*range_that_matters(values), _LINES)
     step = float(levels[1] - levels[0])
     stride = max(1, int(np.ceil(max(measured.values.shape) / _MOST_POINTS)))
     thinned = cut_turns(measured.values, measured.unit)[::stride, ::stride]
@@ -87,17 +87,25 @@ def _label_longest(panel: Panel, sheet: Axes, text: str, pieces: Sequence[np.nda
             )
 
 
-def draw_candidates(panel: Panel, sheet: Axes, candidates: pd.DataFrame, room: Room) -> None:
-    """Mark the candidates by number, 1 for the first row; close ones stand aside with a leader to their dates.
+def draw_candidates(
+    panel: Panel,
+    sheet: Axes,
+    candidates: pd.DataFrame,
+    days: tuple[np.ndarray, np.ndarray],
+    allowed: np.ndarray,
+    room: Room,
+) -> None:
+    """Mark the candidates by number, 1 for the first row; close ones stand aside, with a leader.
 
-    Candidates outside the panel are left out; of a cluster too dense to number, the last keep only their dots.
+    Candidates outside the panel are left out; in too dense a cluster the last keep only their dots.
     """
     x = panel.x_at(days_from_dates(pd.to_datetime(candidates["departure"]).to_numpy()))
     y = panel.y_at(days_from_dates(pd.to_datetime(candidates["arrival"]).to_numpy()))
     box = panel.box
     inside = np.flatnonzero((x >= box.left) & (x <= box.right) & (y >= box.bottom) & (y <= box.top))
     points = [(float(x[i]), float(y[i])) for i in inside]
-    places = place_markers(points, _MARKER_IN + 0.02, room)
+    aside = [_on_an_island(panel, days, allowed, point) for point in points]
+    places = place_markers(points, aside, _MARKER_IN + 0.02, room)
     placed = [(int(i), at, place) for i, at, place in zip(inside, points, places, strict=True) if place]
     moved = [at for at, place in zip(points, places, strict=True) if place != at]
     if moved:
@@ -107,6 +115,16 @@ def draw_candidates(panel: Panel, sheet: Axes, candidates: pd.DataFrame, room: R
         add_line(sheet, *zip(*moved, strict=True), color=INK, markeredgecolor="white", **dot)
     for i, _, place in placed:
         _number(sheet, place, i + 1)
+
+
+def _on_an_island(
+    panel: Panel, days: tuple[np.ndarray, np.ndarray], allowed: np.ndarray, point: tuple[float, float]
+) -> bool:
+    """Tell whether so little ground around a point is allowed that a marker on it would hide the window."""
+    near_x = np.abs(panel.x_at(days[0]) - point[0]) < 1.5 * _MARKER_IN
+    near_y = np.abs(panel.y_at(days[1]) - point[1]) < 1.5 * _MARKER_IN
+    around = allowed[np.ix_(near_x, near_y)]
+    return around.size > 0 and float(around.mean()) < _ISLAND
 
 
 def _number(sheet: Axes, place: tuple[float, float], number: int) -> None:

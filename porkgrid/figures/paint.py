@@ -64,8 +64,10 @@ def value_pixels(
 
 
 def limit_pixels(raster: Raster, ground: Ground) -> np.ndarray:
-    """Return (rows, columns, 3) uint8: the colour and hatch of the limit that alone forbids a cell, or stripes
-    in the pale colours of all the limits that forbid it together."""
+    """Return (rows, columns, 3) uint8: what forbids each cell.
+
+    The colour and hatch of a limit that forbids it alone; stripes in the pale colours of all that do together.
+    """
     kind = raster.cells(ground.kind)
     full = np.concatenate([[OTHER_LIMIT_COLOUR], LIMIT_COLOURS])
     papers = np.stack([ALLOWED_PAPER, NO_FLIGHT_PAPER, NO_TRANSFER_GREY, FORBIDDEN_GREY])
@@ -75,7 +77,7 @@ def limit_pixels(raster: Raster, ground: Ground) -> np.ndarray:
 
 
 def limit_swatch(hatch: int | None, rows: int, columns: int) -> np.ndarray:
-    """Return (rows, columns, 3) uint8 pixels of a limit alone, as the limit map paints it; None is shared."""
+    """Return (rows, columns, 3) uint8 pixels of a limit alone; hatch None is the shared look."""
     colour = OTHER_LIMIT_COLOUR if hatch is None else LIMIT_COLOURS[hatch]
     return plain_swatch(colour, COMMON_HATCH if hatch is None else hatch, rows, columns)
 

@@ -1,4 +1,4 @@
-"""The panel of departure date against arrival date: its place, its axes, its pixels and its flight-time guides."""
+"""The panel of departure date against arrival date: its place, axes, pixels and flight-time guides."""
 
 from __future__ import annotations
 

@@ -1,14 +1,17 @@
-"""Where text can stand so that it covers no other text: candidate numbers and labels on lines. All in inches."""
+"""Where candidate numbers and labels on lines can stand so that they cover no other text. All in inches."""
 
 from __future__ import annotations
 
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, field
+from itertools import islice
 
 import numpy as np
 
 _FIRST_RING_IN, _RING_STEP_IN, _RINGS = 0.17, 0.07, 16
-_DIRECTIONS_DEG = np.arange(0.0, 360.0, 22.5) + 45.0
+_DIRECTIONS_DEG = 135.0 + np.array(
+    [0, 180, 90, -90, 45, -45, 135, -135, 22.5, -22.5, 67.5, -67.5, 112.5, -112.5, 157.5, -157.5]
+)
 
 
 @dataclass(frozen=True)
@@ -62,15 +65,20 @@ def box_around(x: float, y: float, width: float, height: float, angle_deg: float
 
 
 def place_markers(
-    points: Sequence[tuple[float, float]], diameter: float, room: Room
+    points: Sequence[tuple[float, float]], aside: Sequence[bool], diameter: float, room: Room
 ) -> list[tuple[float, float] | None]:
     """Give each point, in order, a free place for its round marker: on itself, else as near as can be.
 
+    aside: points that their own marker must not cover.
     Returns one (x, y) a point, or None where no place within reach is free.
     """
     places: list[tuple[float, float] | None] = []
-    for x, y in points:
-        free = (at for at in _around(x, y) if room.claim(box_around(*at, diameter, diameter)))
+    for (x, y), uncovered in zip(points, aside, strict=True):
+        free = (
+            at
+            for at in islice(_around(x, y), int(uncovered), None)
+            if room.claim(box_around(*at, diameter, diameter))
+        )
         places.append(next(free, None))
     return places
 

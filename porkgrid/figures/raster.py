@@ -1,4 +1,4 @@
-"""From a grid of cells to the pixels of a panel: whole cells, and values interpolated between cell centres."""
+"""From a grid of cells to the pixels of a panel: whole cells, or values interpolated between their centres."""
 
 from __future__ import annotations
 
@@ -39,15 +39,15 @@ class Raster:
         )
 
     def cells(self, grid: np.ndarray) -> np.ndarray:
-        """Return (rows, columns): for each pixel the value of the cell it lies in; grid (departure, arrival)."""
+        """Return (rows, columns): for each pixel the value of its cell; grid (departure, arrival)."""
         column = np.searchsorted(self.x_edges[1:-1], self.x_px, side="right")
         row = np.searchsorted(self.y_edges[1:-1], self.y_px, side="right")
         return np.take(np.take(grid.T, row, axis=0), column, axis=1)
 
     def between(self, grid: np.ndarray, unit: str) -> np.ndarray:
-        """Return (rows, columns): values interpolated bilinearly between cell centres; grid (departure, arrival).
+        """Return (rows, columns): values interpolated bilinearly between cells; grid (departure, arrival).
 
-        Where a neighbour is missing, or an angle jumps by more than half a turn, the value of the cell itself.
+        Where a neighbour is missing or an angle jumps by more than half a turn, the value of the cell itself.
         """
         x0, x1, fx = _neighbours(self.departure, self.x_px)
         y0, y1, fy = _neighbours(self.arrival, self.y_px)
@@ -69,7 +69,7 @@ def raster_for(view: xr.Dataset, width_in: float, height_in: float) -> Raster:
 
 
 def cut_turns(grid: np.ndarray, unit: str) -> np.ndarray:
-    """Return an angle's grid with NaN where it jumps from 360 back to 0, so that nothing is drawn across the jump."""
+    """Return an angle's grid with NaN where it jumps from 360 to 0: nothing shall be drawn across the jump."""
     if unit not in ("deg", "°") or grid.size == 0:
         return grid
     jump = np.zeros(grid.shape, dtype=bool)

@@ -49,7 +49,7 @@ class Window:
 
 
 def open_windows(dates: np.ndarray, best: np.ndarray) -> list[Window]:
-    """Return the runs of dates that have an allowed value; dates datetime64 (n,), best (n,) with NaN for none."""
+    """Return the runs of dates that have a best value; dates datetime64 (n,), best (n,), NaN where none."""
     days = days_from_dates(dates)
     edges = cell_edges(days)
     allowed = np.concatenate(([False], np.isfinite(best), [False]))
@@ -87,7 +87,7 @@ def draw_departure_strip(
         add_rectangle(sheet, start, y, end - start, _LANE_IN, color=WINDOW_INK, linewidth=0)
         put(sheet, middle, y + _LANE_IN + 0.035, text, SMALL_PT, color=WINDOW_INK, ha="center", va="bottom")
     if not windows:
-        _say(sheet, box, "no departure day is allowed", 0.0)
+        _say(sheet, box, "no departure day has an allowed value", 0.0)
 
 
 def draw_arrival_strip(
@@ -117,7 +117,7 @@ def draw_arrival_strip(
         aside = {"rotation": 90, "ha": "left", "va": "center"}
         put(sheet, x + _LANE_IN + 0.03, middle, text, SMALL_PT, color=WINDOW_INK, **aside)
     if not windows:
-        _say(sheet, box, "no arrival day is allowed", 90.0)
+        _say(sheet, box, "no arrival day has an allowed value", 90.0)
 
 
 def _steps(dates: np.ndarray, best: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
@@ -140,7 +140,9 @@ def _mark_values(axis: Axis, scale: Scale | None) -> None:
 def _labelled(
     windows: Sequence[Window], spans: Sequence[tuple[float, float]], low: float, high: float
 ) -> list[tuple[tuple[float, float], str, float]]:
-    """Give each window its bar, the longest text that meets no other's, and the text's middle; all in inches."""
+    """Give each window its bar, the longest text that meets no other's, and the text's middle, in inches."""
+    if not windows:
+        return []
     bars = [_at_least(span, _LEAST_BAR_IN) for span in spans]
     gaps = [0.5 * (before[1] + after[0]) for before, after in pairwise(bars)]
     chosen: list[tuple[tuple[float, float], str, float]] = []

@@ -80,7 +80,7 @@ def wrap(text: str, room_in: float, size_pt: float, max_lines: int) -> list[str]
 
 
 def pack(lead: str, items: Sequence[str], room_in: float, size_pt: float, max_lines: int) -> list[str]:
-    """Set a list after its lead in at most `max_lines` lines; what does not fit is counted: "… and 4 more"."""
+    """Set a list after its lead in at most `max_lines` lines; the rest is counted: "… and 4 more"."""
     separator = " · "
     for count in range(len(items), 0, -1):
         rest = len(items) - count

@@ -150,7 +150,7 @@ def _measure_faults(draft: Draft, route: Route) -> Iterator[Fault]:
     """Faults for limits, ranking and stored measures that name what the route does not have."""
     legs, features = max(len(route) - 1, 1), _features(draft, route)
     known = measures_for(legs, features)
-    named = [(f"limits.{name}", name) for name in draft.limits]
+    named = [(f"limits.{printable(name)}", name) for name in draft.limits]
     named += [("rank.by", draft.rank_by)] if draft.rank_by is not None else []
     named += [("measures", name) for name in draft.measures]
     for key, name in named:

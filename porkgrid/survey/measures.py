@@ -77,9 +77,7 @@ def _total(cells: Cells) -> np.ndarray:
 def _entry_speed(cells: Cells) -> np.ndarray:
     body = cells.arrival.body
     assert body.radius_km is not None and body.entry_altitude_km is not None and body.gm_km3_s2 is not None
-    return burns.hyperbola_speed(
-        cells.v_inf_arrival, body.radius_km + body.entry_altitude_km, body.gm_km3_s2
-    )
+    return burns.hyperbola_speed(cells.v_inf_arrival, body.radius_km + body.entry_altitude_km, body.gm_km3_s2)
 
 
 def _right_ascension(cells: Cells) -> np.ndarray:

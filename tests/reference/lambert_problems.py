@@ -48,6 +48,7 @@ class Problems:
 def random_problems(rng: np.random.Generator, n: int, corner_share: float = 1 / 3) -> Problems:
     """Draw n problems: radius ratio 1e-3..1e3, flight 1e-3..1e3 parabolic times, N = 0 (half of them) to 5.
 
+    A quarter of the radii are equal to 1e-8..0.1, as on resonant legs from a planet to itself.
     ``corner_share`` of the angles lie 1e-6 to 0.1 rad from 0, 180° or 360°; half of the flights with N >= 1 lie within
     1e-8 to 100 of the least time there is, some of them under it.  |pole · normal| >= 0.01, so that the sense
     of motion is not a matter of rounding.
@@ -102,7 +103,8 @@ def _vectors(rng: np.random.Generator, theta: np.ndarray) -> tuple[np.ndarray, n
     normal[np.abs(height) < 0.01] = POLE
     first = _unit(np.cross(normal, rng.normal(size=(n, 3))))
     second = np.cross(normal, first)
-    ratio = 10 ** rng.uniform(-3, 3, (n, 1))
+    alike = 1 + rng.choice([-1, 1], (n, 1)) * 10 ** rng.uniform(-8, -1, (n, 1))
+    ratio = np.where(rng.random((n, 1)) < 0.25, alike, 10 ** rng.uniform(-3, 3, (n, 1)))
     direction = np.cos(theta)[:, None] * first + np.sin(theta)[:, None] * second
     return AU_KM * first / np.sqrt(ratio), AU_KM * direction * np.sqrt(ratio)
 

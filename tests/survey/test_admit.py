@@ -143,7 +143,7 @@ def test_a_body_may_be_met_again_after_a_revolution(load):
         ('"mars"', '"Earth"', "leg 1, max_revs: from a body back to itself"),
         ("last = 2030-03-31", "last = 2651-01-01", "encounter 2, last: 2651-01-01 is outside what DE440 has"),
         ("first = 2028-10-15", "first = 1500-10-15", "encounter 1, first: 1500-10-15 is outside"),
-        ("c3_km2_s2 = {", "c3_km_s = {", "limits.c3_km_s: there is no measure 'c3_km_s'; the nearest is 'c3_km2_s2'"),
+        ("c3_km2_s2 = {", "c3_km_s = {", "limits.c3_km_s: there is no measure 'c3_km_s'; the nearest"),
         ("c3_km2_s2 = {", "leg2_tof_days = {", "limits.leg2_tof_days: this route has no"),
         ("capture =", "# capture =", "limits.dv_capture_km_s: this route has no 'dv_capture_km_s'; it needs"),
         ("parking =", "# parking =", "rank.by: this route has no 'dv_total_km_s'; it needs a parking orbit"),
@@ -254,5 +254,7 @@ def test_checking_a_scenario_loads_no_heavy_library():
         "print(*heavy)"
     )
     path = SCENARIOS / "earth-mars-2028.toml"
-    done = subprocess.run([sys.executable, "-c", code, str(path)], capture_output=True, text=True, check=False)
+    done = subprocess.run(
+        [sys.executable, "-c", code, str(path)], capture_output=True, text=True, check=False
+    )
     assert (done.returncode, done.stdout.strip(), done.stderr) == (0, "", "")

@@ -1,0 +1,41 @@
+"""porkgrid: launch-window porkchop surveys with contour charts and ranked dates.
+
+The public names, imported when first used, so that `porkgrid --help` does not pay for them.
+"""
+
+from __future__ import annotations
+
+from importlib import import_module
+from typing import TYPE_CHECKING, Any
+
+if TYPE_CHECKING:
+    from porkgrid.errors import RequestError as RequestError
+    from porkgrid.errors import RunError as RunError
+    from porkgrid.physics.lambert import lambert as lambert
+    from porkgrid.scenario import Scenario as Scenario
+    from porkgrid.survey.admit import load_scenario as load_scenario
+    from porkgrid.survey.surveys import Survey as Survey
+    from porkgrid.survey.surveys import open_survey as open_survey
+    from porkgrid.survey.sweep import sweep as sweep
+
+_HOMES = {
+    "RequestError": "porkgrid.errors",
+    "RunError": "porkgrid.errors",
+    "Scenario": "porkgrid.scenario",
+    "Survey": "porkgrid.survey.surveys",
+    "lambert": "porkgrid.physics.lambert",
+    "load_scenario": "porkgrid.survey.admit",
+    "open_survey": "porkgrid.survey.surveys",
+    "sweep": "porkgrid.survey.sweep",
+}
+__all__ = [*_HOMES]
+
+
+def __getattr__(name: str) -> Any:
+    if name in _HOMES:
+        return getattr(import_module(_HOMES[name]), name)
+    raise AttributeError(f"module 'porkgrid' has no attribute {name!r}")
+
+
+def __dir__() -> list[str]:
+    return __all__

@@ -1,0 +1,67 @@
+"""When the limits forbid every cell: which limit costs most, and what would open the first cell."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from porkgrid.survey.limits import REASONS, Bound
+from porkgrid.survey.store import BLOCKED_BY
+from porkgrid.survey.surveys import Survey
+from porkgrid.survey.view import flag_shares, row_bands
+
+
+def explain_closed(survey: Survey) -> list[str]:
+    """Say in a few lines why no cell is allowed and what would open one; empty where some are."""
+    if survey.provenance["cells_allowed"]:
+        return []
+    lines = ["The limits forbid every cell."]
+    worst = max(flag_shares(survey), key=lambda share: share.share)
+    lines.append(f"Most costly: {worst.title}, which forbids {100 * worst.share:.1f} % of the grid.")
+    openers = [line for bound in survey.plan.bounds if (line := _would_open(survey, bound))]
+    return lines + (openers or [_nearest_cell(survey)])
+
+
+def _would_open(survey: Survey, bound: Bound) -> str | None:
+    """The value of one limit that opens the first cell, the others as they are."""
+    mask = np.uint32(1 << _bit(survey, bound))
+    least, value = np.inf, np.nan
+    for values, blocked in row_bands(survey, bound.measure.name):
+        excess = np.where(blocked == mask, bound.excess(values), np.inf)
+        where = np.unravel_index(np.argmin(excess), excess.shape)
+        if excess[where] < least:
+            least, value = float(excess[where]), float(values[where])
+    if not np.isfinite(least):
+        return None
+    end = "min" if bound.least is not None and value < bound.least else "max"
+    return f"The first cell opens with {bound.measure.name} {end} = {_beyond(value, end):g} {bound.measure.unit}."
+
+
+def _nearest_cell(survey: Survey) -> str:
+    """Where no single limit would do: the cell that the fewest limits forbid, and what it needs."""
+    fewest, cell, names = 99, (0, 0), ""
+    offset = 0
+    meanings = survey.grid[BLOCKED_BY].attrs["flag_meanings"].split()
+    for _, blocked in row_bands(survey, BLOCKED_BY):
+        count = np.bitwise_count(blocked).astype(int)
+        count[(blocked & np.uint32((1 << len(REASONS)) - 1)) != 0] = 99
+        i, j = np.unravel_index(np.argmin(count), count.shape)
+        if count[i, j] < fewest:
+            fewest, cell = int(count[i, j]), (offset + int(i), int(j))
+            names = [name for bit, name in enumerate(meanings) if int(blocked[i, j]) >> bit & 1]
+        offset += len(blocked)
+    if fewest == 99:
+        return "No cell can be flown at all: look at the date windows."
+    at = survey.grid.isel(departure=cell[0], arrival=cell[1])
+    needs = ", ".join(f"{name} {float(at[name]):.4g}" for name in names)
+    dates = " to ".join(str(at[side].values)[:10] for side in ("departure", "arrival"))
+    return f"No single limit opens a cell; the nearest, {dates}, needs {needs}."
+
+
+def _bit(survey: Survey, bound: Bound) -> int:
+    return survey.grid[BLOCKED_BY].attrs["flag_meanings"].split().index(bound.measure.name)
+
+
+def _beyond(value: float, end: str) -> float:
+    """The value rounded outward to five digits, so that the cell is inside."""
+    unit = 10.0 ** (np.floor(np.log10(abs(value))) - 4) if value else 1e-4
+    return float((np.floor if end == "min" else np.ceil)(value / unit) * unit)

@@ -1,0 +1,59 @@
+"""A survey as it lies on disk, opened for reading."""
+
+from __future__ import annotations
+
+from functools import cached_property
+from pathlib import Path
+from typing import Any
+
+import pandas as pd
+import xarray as xr
+
+from porkgrid.errors import RequestError
+from porkgrid.scenario import Scenario
+from porkgrid.survey.admit import load_scenario
+from porkgrid.survey.folder import CANDIDATES, SCENARIO, read_provenance
+from porkgrid.survey.plan import Plan, make_plan
+from porkgrid.survey.store import STORE
+
+
+class Survey:
+    """A survey folder. Nothing is read before it is asked for."""
+
+    def __init__(self, path: Path, provenance: dict[str, Any]) -> None:
+        self.path = path
+        self.provenance = provenance
+
+    @cached_property
+    def grid(self) -> xr.Dataset:
+        """The measures of every cell: dimensions `departure` and `arrival`, and `blocked_by`."""
+        return xr.open_zarr(self.path / STORE, chunks=None)
+
+    @cached_property
+    def candidates(self) -> pd.DataFrame:
+        """The ranked table: rank, ISO dates, then measures."""
+        return pd.read_csv(self.path / CANDIDATES)
+
+    @cached_property
+    def scenario(self) -> Scenario:
+        """The scenario as it was given."""
+        return load_scenario(self.path / SCENARIO)
+
+    @cached_property
+    def plan(self) -> Plan:
+        """The scenario with its tables, limits and measures looked up anew."""
+        return make_plan(self.scenario)
+
+    def __repr__(self) -> str:
+        return f"<Survey {self.provenance.get('name')!r} in {self.path}>"
+
+
+def open_survey(path: str | Path) -> Survey:
+    """Open a survey folder. RequestError where it is none, or is not finished."""
+    folder = Path(path)
+    provenance = read_provenance(folder)
+    if provenance.get("state") != "complete":
+        raise RequestError(
+            f"{folder}: the sweep is not finished; `porkgrid sweep` with the same scenario goes on"
+        )
+    return Survey(folder, provenance)
