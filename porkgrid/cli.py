@@ -17,7 +17,7 @@ if TYPE_CHECKING:
 
 app = typer.Typer(
     name="porkgrid",
-    help="Survey launch windows: sweep departure and arrival dates, see which limits forbid what, rank the dates.\n\n"
+    help="Survey launch windows: sweep dates, see which limits forbid what, rank what is left.\n\n"
     "Early-phase estimates from patched conics; not for flight operations.",
     no_args_is_help=True,
     pretty_exceptions_enable=False,
@@ -203,9 +203,10 @@ def measures(
 
     entries = all_entries()
     if scenario is not None:
-        from porkgrid.survey.admit import load_scenario, measures_of
+        from porkgrid.survey.admit import load_scenario
+        from porkgrid.survey.plan import make_plan
 
-        entries = list(measures_of(load_scenario(scenario)).values())
+        entries = list(make_plan(load_scenario(scenario)).measures.values())
     if as_json:
         terminal.print_json(
             [{"name": e.name, "unit": e.unit, "meaning": e.meaning, "needs": list(e.needs)} for e in entries]

@@ -23,7 +23,7 @@ def dates_from_days(days: np.ndarray | float) -> np.ndarray:
 
 def iso_day(date: np.datetime64) -> str:
     """Return the calendar day of a date: 2028-11-30."""
-    return str(np.datetime_as_string(np.datetime64(date, "D")))
+    return str(np.datetime_as_string(date.astype("datetime64[D]")))
 
 
 def cell_edges(days: np.ndarray) -> np.ndarray:
@@ -71,19 +71,20 @@ def _day_ticks(first_day: float, last_day: float, step: int) -> tuple[np.ndarray
 
 
 def _month_ticks(first_day: float, last_day: float, step: int) -> tuple[np.ndarray, list[str]]:
-    first, last = dates_from_days(first_day), dates_from_days(last_day)
-    months = np.arange(first.astype("datetime64[M]"), last.astype("datetime64[M]") + 1)
-    months = months[months.astype(np.int64) % step == 0]  # counted from January 1970
-    return _within(months, first, last)
+    return _calendar_ticks(first_day, last_day, "datetime64[M]", step, 0)
 
 
 def _year_ticks(first_day: float, last_day: float, step: int) -> tuple[np.ndarray, list[str]]:
-    first, last = dates_from_days(first_day), dates_from_days(last_day)
-    years = np.arange(first.astype("datetime64[Y]"), last.astype("datetime64[Y]") + 1)
-    years = years[(years.astype(np.int64) + 1970) % step == 0]
-    return _within(years, first, last)
+    return _calendar_ticks(first_day, last_day, "datetime64[Y]", step, 1970)
 
 
-def _within(marks: np.ndarray, first: np.ndarray, last: np.ndarray) -> tuple[np.ndarray, list[str]]:
-    inside = marks[(marks >= first) & (marks <= last)]
-    return days_from_dates(inside), list(np.datetime_as_string(inside))
+def _calendar_ticks(
+    first_day: float, last_day: float, unit: str, step: int, epoch: int
+) -> tuple[np.ndarray, list[str]]:
+    """Return the starts of every step-th month or year; epoch is the number of the one that 1970 begins."""
+    first, last = dates_from_days(np.array([first_day, last_day])).astype(unit).astype(np.int64)
+    numbers = np.arange(first, last + 1)
+    marks = numbers[(numbers + epoch) % step == 0].astype(unit)
+    days = days_from_dates(marks)
+    inside = (days >= first_day) & (days <= last_day)
+    return days[inside], list(np.datetime_as_string(marks[inside]))

@@ -34,7 +34,7 @@ class Scale:
 
 
 def round_step(span: float, pieces: int) -> float:
-    """Return the smallest of 1, 2, 2.5, 5 times a power of ten that cuts a span into so many pieces or fewer."""
+    """Return the least of 1, 2, 2.5, 5 times a power of ten that cuts a span into so many pieces or fewer."""
     raw = span / pieces
     power = 10.0 ** np.floor(np.log10(raw))
     return float(next(power * step for step in _ROUND_STEPS if power * step >= raw * (1.0 - 1e-9)))

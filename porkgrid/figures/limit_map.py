@@ -80,7 +80,7 @@ def _draw_costs(column: Column, ground: Ground, shares: Sequence[FlagShare]) -> 
     column.heading("Share of the grid that each limit forbids")
     _draw_bar_key(column)
     room = int((column.y - column.bottom) / _BLOCK)
-    order = range(len(costs))
+    order = list(range(len(costs)))
     if len(costs) > room:
         largest = sorted(order, key=lambda i: (-costs[i].share, i))[: room - 1]
         order = sorted(largest)

@@ -17,8 +17,8 @@ _SIGNS = {r"\Delta ": "Δ", r"\Delta": "Δ", r"\infty": "∞", r"\oplus": "⊕",
 class Measured:
     """A measure on a grid.
 
-    values: (departure, arrival) float, NaN where unknown. label: as on axes, "C3". unit: "km²/s²", or "" for a
-    pure number.
+    values: (departure, arrival) float, NaN where unknown. label: as on axes, "C3". unit: "km²/s²", or "" if
+    it has none.
     """
 
     name: str

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from typing import Any
 
 import numpy as np
 import pandas as pd
@@ -59,8 +60,8 @@ def draw_lines(
     )
     for level, path in zip(drawn.levels, drawn.get_paths(), strict=True):
         text = value_text(float(level), step)
-        pieces = [piece for piece in path.to_polygons(closed_only=False) if len(piece) > 1]
-        _label_longest(panel, sheet, text, pieces, room)
+        pieces = [np.asarray(piece) for piece in path.to_polygons(closed_only=False)]
+        _label_longest(panel, sheet, text, [piece for piece in pieces if len(piece) > 1], room)
 
 
 def _label_longest(panel: Panel, sheet: Axes, text: str, pieces: Sequence[np.ndarray], room: Room) -> None:
@@ -111,7 +112,7 @@ def draw_candidates(
     if moved:
         leaders = [[at, place] for _, at, place in placed if place != at]
         add_segments(sheet, leaders, colors=INK, linewidths=0.7)
-        dot = {"linestyle": "", "marker": "o", "markersize": 3.8, "markeredgewidth": 0.6}
+        dot: Any = {"linestyle": "", "marker": "o", "markersize": 3.8, "markeredgewidth": 0.6}
         add_line(sheet, *zip(*moved, strict=True), color=INK, markeredgecolor="white", **dot)
     for i, _, place in placed:
         _number(sheet, place, i + 1)
@@ -133,5 +134,5 @@ def _number(sheet: Axes, place: tuple[float, float], number: int) -> None:
     size = _MARKER_IN * _POINTS_PER_INCH - 1.0
     disc = {"marker": "o", "markersize": size, "markeredgecolor": INK, "markeredgewidth": 0.8}
     add_line(sheet, [place[0]], [place[1]], color=face, **disc)
-    middle = {"ha": "center", "va": "center_baseline", "weight": "bold"}
+    middle: Any = {"ha": "center", "va": "center_baseline", "weight": "bold"}
     put(sheet, *place, str(number), SMALL_PT, color=ink, **middle)

@@ -66,7 +66,7 @@ def value_pixels(
 def limit_pixels(raster: Raster, ground: Ground) -> np.ndarray:
     """Return (rows, columns, 3) uint8: what forbids each cell.
 
-    The colour and hatch of a limit that forbids it alone; stripes in the pale colours of all that do together.
+    The colour and hatch of a limit that forbids it alone; stripes in the pale colours of all that do so.
     """
     kind = raster.cells(ground.kind)
     full = np.concatenate([[OTHER_LIMIT_COLOUR], LIMIT_COLOURS])

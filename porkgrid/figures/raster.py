@@ -1,4 +1,4 @@
-"""From a grid of cells to the pixels of a panel: whole cells, or values interpolated between their centres."""
+"""From a grid of cells to the pixels of a panel: whole cells, or values interpolated between cells."""
 
 from __future__ import annotations
 
@@ -69,7 +69,7 @@ def raster_for(view: xr.Dataset, width_in: float, height_in: float) -> Raster:
 
 
 def cut_turns(grid: np.ndarray, unit: str) -> np.ndarray:
-    """Return an angle's grid with NaN where it jumps from 360 to 0: nothing shall be drawn across the jump."""
+    """Return an angle's grid with NaN where it jumps from 360 to 0, so that no line crosses the jump."""
     if unit not in ("deg", "°") or grid.size == 0:
         return grid
     jump = np.zeros(grid.shape, dtype=bool)

@@ -29,7 +29,7 @@ FAINT_INK = "#a0a7ae"
 PAPER = "#ffffff"
 ACCENT = "#b5179e"
 
-_SETTINGS = {
+_SETTINGS: Any = {
     "font.family": ["DejaVu Sans"],  # comes with matplotlib: same widths on every machine
     "svg.hashsalt": "porkgrid",  # the same ids in the same figure every time
     "svg.fonttype": "path",

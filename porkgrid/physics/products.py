@@ -2,29 +2,30 @@
 
 from __future__ import annotations
 
-from llvmlite import ir
+from typing import Any
+
 from numba import njit, types
 from numba.extending import intrinsic
 
 from porkgrid.physics.timeflight import ROW
 
 
-@intrinsic
-def _fma(typingctx, a, b, c):
-    """a·b + c, rounded once."""
-
+def _fused(typingctx, a, b, c):
     def generate(context, builder, signature, arguments):
         return builder.fma(*arguments)
 
     return types.float64(types.float64, types.float64, types.float64), generate
 
 
+fma: Any = intrinsic(_fused)  # a·b + c, rounded once
+
+
 @njit(**ROW, inline="always")
 def difference_of_products(a, b, c, d):
     """a·b − c·d to within two units in the last place (Kahan; Jeannerod, Louvet and Muller 2013)."""
     cd = c * d
-    lost = _fma(-c, d, cd)
-    return _fma(a, b, -cd) + lost
+    lost = fma(-c, d, cd)
+    return fma(a, b, -cd) + lost
 
 
 @njit(**ROW, inline="always")

@@ -16,13 +16,19 @@ c the chord, R = |r1| + |r2|, θ the transfer angle:
 from __future__ import annotations
 
 import math
+from typing import Any
 
 import numpy as np
 from numba import njit
 
 # No reassociation: δ and the compensated products rely on the order of operations.
-ROW = {"nogil": True, "cache": True, "error_model": "numpy", "fastmath": {"contract", "nsz", "arcp"}}
-PLAIN = {"nogil": True, "cache": True, "error_model": "numpy"}
+ROW: dict[str, Any] = {
+    "nogil": True,
+    "cache": True,
+    "error_model": "numpy",
+    "fastmath": {"contract", "nsz", "arcp"},
+}
+PLAIN: dict[str, Any] = {"nogil": True, "cache": True, "error_model": "numpy"}
 
 # F(w) on 0.7 <= w <= 1.4 as a polynomial in w − 1: interpolation at Chebyshev nodes in 40-digit arithmetic,
 # 5.9e-16 relative (tests/physics/test_timeflight.py measures it against mpmath).

@@ -59,7 +59,7 @@ def _flight(q, w, p, sigma, revs):
 
 @njit(**PLAIN)
 def _reciprocal_excess(u):
-    """1/F(u) − u for u > 1, which falls to 0 as u grows: there σ + pF = F(1 + σ(1/F − u)) keeps its digits."""
+    """1/F(u) − u for u > 1; as u grows it falls to 0 and σ + pF = F(1 + σ(1/F − u)) keeps its digits."""
     root = math.sqrt((u - 1.0) * (u + 1.0))
     ratio = math.log(u + root) / root
     return (u * ratio - 1.0) / (u - ratio)

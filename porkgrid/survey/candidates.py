@@ -6,7 +6,7 @@ from pathlib import Path
 
 import numpy as np
 import pandas as pd
-import zarr
+import xarray as xr
 
 from porkgrid.errors import RequestError
 from porkgrid.sky.bodies import find_body
@@ -21,24 +21,17 @@ from porkgrid.survey.surveys import Survey
 
 def pick(folder: Path, plan: Plan, by: str, sign: float, keep: int, apart_days: float) -> np.ndarray:
     """Epochs (k, 2) of the distinct local bests of a stored measure, best first, TDB Julian dates."""
-    group = zarr.open_group(folder / STORE, mode="r")
-    rank, blocked = group[by], group[BLOCKED_BY]
     departure, arrival = plan.tables[0].jd, plan.tables[-1].jd
-    n, m = plan.shape
+    grid = xr.open_zarr(folder / STORE, chunks=None)[[by, BLOCKED_BY]]
 
     def read(rows: slice) -> tuple[np.ndarray, np.ndarray]:
-        block = np.asarray(blocked[rows])
-        values = np.asarray(rank[rows] if rank.ndim == 2 else _along(rank, by, plan, rows))
-        return np.broadcast_to(values, block.shape), block
+        band = grid.isel(departure=rows)
+        values = band[by].broadcast_like(band[BLOCKED_BY]).transpose("departure", "arrival")
+        return values.values, band[BLOCKED_BY].values
 
-    i, j, _ = local_bests(read, n, sign)
+    i, j, _ = local_bests(read, len(departure), sign)
     epochs = np.column_stack([departure[i], arrival[j]])
     return epochs[list(distinct(epochs, apart_days, keep))]
-
-
-def _along(rank: zarr.Array, by: str, plan: Plan, rows: slice) -> np.ndarray:
-    """A measure of one date, shaped to broadcast over a band of rows."""
-    return rank[rows][:, None] if plan.measures[by].dims == ("departure",) else rank[:][None, :]
 
 
 def tabulate(plan: Plan, epochs: np.ndarray) -> pd.DataFrame:

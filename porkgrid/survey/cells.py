@@ -11,7 +11,7 @@ from functools import cached_property
 
 import numpy as np
 
-from porkgrid.sky.bodies import Body, pole_axes
+from porkgrid.sky.bodies import pole_axes
 from porkgrid.sky.states import StateTable
 from porkgrid.survey.legs import LegCells
 

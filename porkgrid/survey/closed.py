@@ -33,12 +33,13 @@ def _would_open(survey: Survey, bound: Bound) -> str | None:
     if not np.isfinite(least):
         return None
     end = "min" if bound.least is not None and value < bound.least else "max"
-    return f"The first cell opens with {bound.measure.name} {end} = {_beyond(value, end):g} {bound.measure.unit}."
+    opening = f"{_beyond(value, end):g} {bound.measure.unit}"
+    return f"The first cell opens with {bound.measure.name} {end} = {opening}."
 
 
 def _nearest_cell(survey: Survey) -> str:
     """Where no single limit would do: the cell that the fewest limits forbid, and what it needs."""
-    fewest, cell, names = 99, (0, 0), ""
+    fewest, cell, names = 99, (0, 0), list[str]()
     offset = 0
     meanings = survey.grid[BLOCKED_BY].attrs["flag_meanings"].split()
     for _, blocked in row_bands(survey, BLOCKED_BY):

@@ -90,8 +90,8 @@ def _same_scenario(folder: Path, scenario: Scenario) -> None:
     if held["fingerprint"] == fingerprint(scenario):
         return
     raise RequestError(
-        f"{folder}: holds another survey, {held.get('name')!r} from {held.get('started')}, whose scenario differs "
-        f"in {', '.join(_differences(held.get('asked', {}), scenario))}; "
+        f"{folder}: holds another survey, {held.get('name')!r} from {held.get('started')}, whose "
+        f"scenario differs in {', '.join(_differences(held.get('asked', {}), scenario))}; "
         "give another folder with --out, or --fresh to replace it"
     )
 

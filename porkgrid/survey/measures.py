@@ -54,7 +54,8 @@ class Measure:
 
 def _departure(cells: Cells) -> np.ndarray:
     orbit, gm = cells.parking, cells.departure.body.gm_km3_s2
-    assert orbit is not None and gm is not None
+    assert orbit is not None
+    assert gm is not None
     apsides = (orbit.periapsis_km, orbit.apoapsis_km)
     if orbit.inclination_rad is None:
         return burns.apsis_burn(cells.v_inf_departure, *apsides, gm)
@@ -65,7 +66,8 @@ def _departure(cells: Cells) -> np.ndarray:
 
 def _capture(cells: Cells) -> np.ndarray:
     orbit, gm = cells.capture, cells.arrival.body.gm_km3_s2
-    assert orbit is not None and gm is not None
+    assert orbit is not None
+    assert gm is not None
     return burns.apsis_burn(cells.v_inf_arrival, orbit.periapsis_km, orbit.apoapsis_km, gm)
 
 
@@ -76,7 +78,9 @@ def _total(cells: Cells) -> np.ndarray:
 
 def _entry_speed(cells: Cells) -> np.ndarray:
     body = cells.arrival.body
-    assert body.radius_km is not None and body.entry_altitude_km is not None and body.gm_km3_s2 is not None
+    assert body.radius_km is not None
+    assert body.entry_altitude_km is not None
+    assert body.gm_km3_s2 is not None
     return burns.hyperbola_speed(cells.v_inf_arrival, body.radius_km + body.entry_altitude_km, body.gm_km3_s2)
 
 
@@ -144,7 +148,8 @@ _ENTRIES = [
     Measure("c3_km2_s2", "km²/s²", "$C_3$", "departure energy: the excess speed squared", lambda c: c.c3),
     Measure("v_inf_departure_km_s", "km/s", r"departure $v_\infty$", "departure excess speed",
             lambda c: c.v_inf_departure),
-    Measure("dla_deg", "deg", "DLA", "declination of the launch asymptote (ICRF axes at Earth, else the body's pole)",
+    Measure("dla_deg", "deg", "DLA", "declination of the launch asymptote "
+            "(ICRF axes at Earth, else to the body's pole)",
             lambda c: np.degrees(c.departure_declination_rad), needs=("departure pole",)),
     Measure("rla_deg", "deg", "RLA", "right ascension of the launch asymptote, 0 to 360 (ICRF axes at Earth, "
             "else from the node of the body's equator on the ICRF equator)",
@@ -152,10 +157,11 @@ _ENTRIES = [
     Measure("dv_departure_km_s", "km/s", r"departure $\Delta v$", "burn from the parking orbit's periapsis, "
             "with the plane change that the asymptote's declination asks of the orbit's inclination",
             _departure, needs=("parking",)),
-    Measure("v_inf_arrival_km_s", "km/s", r"arrival $v_\infty$", "arrival excess speed", lambda c: c.v_inf_arrival),
+    Measure("v_inf_arrival_km_s", "km/s", r"arrival $v_\infty$", "arrival excess speed",
+            lambda c: c.v_inf_arrival),
     Measure("dv_capture_km_s", "km/s", r"capture $\Delta v$", "burn at the capture orbit's periapsis",
             _capture, needs=("capture",)),
-    Measure("entry_speed_km_s", "km/s", "entry speed", "inertial speed at the body's entry interface altitude",
+    Measure("entry_speed_km_s", "km/s", "entry speed", "inertial speed at the entry interface altitude",
             _entry_speed, needs=("entry",)),
     Measure("arrival_declination_deg", "deg", "arrival declination",
             "declination of the incoming velocity asymptote to the arrival body's equator",
@@ -164,18 +170,20 @@ _ENTRIES = [
             "angle at the arrival body between the incoming velocity asymptote and the Sun", _arrival_phase),
     Measure("arrival_sun_distance_au", "au", "Sun distance at arrival", "distance from the Sun at arrival",
             _sun_distance, BY_ARRIVAL),
-    Measure("arrival_earth_distance_au", "au", "Earth distance at arrival", "distance from the Earth at arrival",
+    Measure("arrival_earth_distance_au", "au", "Earth distance at arrival", "distance from Earth at arrival",
             _earth_distance, BY_ARRIVAL),
     Measure("arrival_sep_deg", "deg", "Sun–Earth–body angle at arrival",
             "angle at the Earth between the Sun and the arrival body; small near solar conjunction",
             _sun_earth_body, BY_ARRIVAL),
-    Measure("arrival_mars_ls_deg", "deg", r"Mars $L_s$ at arrival", "areocentric longitude of the Sun at arrival "
-            "(0 = northern spring)", _mars_season, BY_ARRIVAL, ("mars arrival",)),
+    Measure("arrival_mars_ls_deg", "deg", r"Mars $L_s$ at arrival",
+            "areocentric longitude of the Sun at arrival (0 = northern spring)",
+            _mars_season, BY_ARRIVAL, ("mars arrival",)),
     Measure("tof_days", "days", "flight time", "time of flight from departure to arrival", _tof),
     Measure("dv_total_km_s", "km/s", r"total $\Delta v$", "sum of all burns that the route makes",
             _total, needs=("parking",)),
     Measure("sun_min_au", "au", "least Sun distance", "least distance from the Sun on the way", _nearest_sun),
-    Measure("sun_max_au", "au", "greatest Sun distance", "greatest distance from the Sun on the way", _farthest_sun),
+    Measure("sun_max_au", "au", "greatest Sun distance", "greatest distance from the Sun on the way",
+            _farthest_sun),
 ]  # fmt: skip
 
 _LEG_ENTRIES = [
@@ -189,9 +197,10 @@ _LEG_ENTRIES = [
     Measure("leg{n}_branch", "1", "leg {n} branch",
             "which solution with revolutions: −1 left (longer period), +1 right, 0 no revolutions",
             lambda c, n: c.legs[n - 1].branch),
-    Measure("leg{n}_sun_min_au", "au", "leg {n} least Sun distance", "least Sun distance on the arc of leg {n}",
+    Measure("leg{n}_sun_min_au", "au", "leg {n} least Sun distance", "least on the arc that leg {n} flies",
             lambda c, n: c.legs[n - 1].sun_range_km[0] / AU_KM),
-    Measure("leg{n}_sun_max_au", "au", "leg {n} greatest Sun distance", "greatest Sun distance on the arc of leg {n}",
+    Measure("leg{n}_sun_max_au", "au", "leg {n} greatest Sun distance",
+            "greatest on the arc that leg {n} flies",
             lambda c, n: c.legs[n - 1].sun_range_km[1] / AU_KM),
 ]  # fmt: skip
 

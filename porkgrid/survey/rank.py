@@ -38,7 +38,7 @@ def local_bests(
 
 
 def distinct(epochs: np.ndarray, apart_days: float, keep: int) -> Iterator[int]:
-    """Indices of the first `keep` rows of epochs (k, encounters), best first, that are windows of their own."""
+    """Indices of the first `keep` rows of epochs (k, encounters), best first, that are windows apart."""
     chosen: list[np.ndarray] = []
     for index, dates in enumerate(epochs):
         if len(chosen) == keep:

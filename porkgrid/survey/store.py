@@ -9,6 +9,7 @@ from __future__ import annotations
 import warnings
 from collections.abc import Mapping
 from pathlib import Path
+from typing import Any
 
 import numpy as np
 import xarray as xr
@@ -92,7 +93,7 @@ def _attributes(measure: Measure) -> dict[str, str]:
     return {"units": measure.unit, "long_name": measure.meaning, "symbol": measure.symbol}
 
 
-def _flags(plan: Plan) -> dict[str, object]:
+def _flags(plan: Plan) -> dict[str, Any]:
     names = flag_names(plan.bounds)
     return {
         "long_name": "what forbids the cell; 0 where it is allowed",
@@ -103,7 +104,7 @@ def _flags(plan: Plan) -> dict[str, object]:
 
 
 def _new_array(
-    group: zarr.Group, name: str, plan: Plan, dtype: type, fill: float, attributes: dict[str, object]
+    group: zarr.Group, name: str, plan: Plan, dtype: type, fill: float, attributes: dict[str, Any]
 ) -> None:
     group.create_array(
         name,
