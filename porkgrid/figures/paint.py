@@ -89,7 +89,7 @@ def pale_swatch(hatch: int | None, rows: int, columns: int) -> np.ndarray:
 
 
 def several_swatch(colours: list[int], rows: int, columns: int) -> np.ndarray:
-    """Return (rows, columns, 3) uint8 pixels striped in the pale colours of limits, given by their hatches."""
+    """Return (rows, columns, 3) uint8 pixels striped in the pale colours of limits, by their hatches."""
     pale = (1.0 - _SEVERAL_TINT) * LIMIT_COLOURS + _SEVERAL_TINT
     stripe = _stripes(rows, columns) % len(colours)
     return np.rint(pale[np.asarray(colours)][stripe] * 255.0).astype(np.uint8)

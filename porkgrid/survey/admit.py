@@ -7,9 +7,9 @@ from datetime import date
 from itertools import pairwise
 from pathlib import Path
 
-from porkgrid._faults import Fault, printable
 from porkgrid.errors import RequestError
 from porkgrid.scenario import Draft, Outline, Scenario, body_of, read_scenario
+from porkgrid.scenario.faults import Fault, printable
 from porkgrid.sky.bodies import BODIES, Body, find_body
 from porkgrid.sky.epochs import iso_from_jd, jd_from_date
 from porkgrid.sky.kernel import Ephemeris, open_ephemeris
@@ -19,12 +19,12 @@ from porkgrid.survey.measures import FEATURES, features_of, measures_for, why_ab
 Route = list[Body | None]
 
 
-def load_scenario(path: str | Path) -> Scenario:
-    """Read a scenario file that the engine can sweep.
+def load_scenario(path: str | Path, beside: Path | None = None) -> Scenario:
+    """Read a scenario file that the engine can sweep; relative kernel paths resolve from `beside` or the file.
 
     Raises RequestError with every fault of the file, each `FILE: KEY: what is wrong; what would be right`.
     """
-    draft = read_scenario(path)
+    draft = read_scenario(path, beside)
     faults = [*draft.faults, *_engine_faults(draft)]
     if draft.scenario is None or faults:
         raise RequestError(*(fault.line(draft.path) for fault in faults))

@@ -37,7 +37,7 @@ class Survey:
     @cached_property
     def scenario(self) -> Scenario:
         """The scenario as it was given."""
-        return load_scenario(self.path / SCENARIO)
+        return load_scenario(self.path / SCENARIO, Path(self.provenance["scenario_folder"]))
 
     @cached_property
     def plan(self) -> Plan:

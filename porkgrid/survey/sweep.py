@@ -73,6 +73,7 @@ def _begin(folder: Path, plan: Plan) -> dict[str, Any]:
     provenance: dict[str, Any] = {
         "name": scenario.name,
         "route": plan.route,
+        "scenario_folder": str(scenario.path.absolute().parent),
         "state": "running",
         "fingerprint": folders.fingerprint(scenario),
         "asked": scenario.model_dump(mode="json", exclude={"path", "text", "description"}),

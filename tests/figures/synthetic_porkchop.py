@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
+
 import numpy as np
 import pandas as pd
 import xarray as xr
@@ -24,7 +26,7 @@ def porkchop(
     c3_max: float | None = 25.0,
     **attrs: str,
 ) -> xr.Dataset:
-    """A grid with c3, v_inf_arrival, dla and tof; `limits` adds further limits: name -> (title, forbidden cells)."""
+    """A grid with c3, v_inf_arrival, dla, tof; `limits` adds limits: name -> (title, forbidden cells)."""
     d = (departure - np.datetime64("2028-12-01", "ms")).astype(float)[:, None] / 86_400_000
     tof = (arrival[None, :] - departure[:, None]).astype(float) / 86_400_000
     season = (d + 390.0) % 780.0 - 390.0
@@ -78,7 +80,7 @@ def porkchop(
             "rank_order": "least",
             "kernel": "DE440",
             "porkgrid": "0.1.0",
-            "caution": "Patched conics for early design: confirm any date with a full-force trajectory before use.",
+            "caution": "Patched conics for early design: confirm a date with a full-force trajectory before use.",
             **attrs,
         },
     )
@@ -123,9 +125,13 @@ def candidates_of(view: xr.Dataset, of: str, keep: int, apart_days: float = 10.0
             break
         if all(abs(departure[i] - a) >= apart or abs(arrival[j] - b) >= apart for a, b in kept):
             kept.append((departure[i], arrival[j]))
-            rows.append({"rank": len(rows) + 1, "departure": str(departure[i].astype("datetime64[D]")),
-                         "arrival": str(arrival[j].astype("datetime64[D]")), of: float(values[i, j])})  # fmt: skip
+            when = {"departure": _iso(departure[i]), "arrival": _iso(arrival[j])}
+            rows.append({"rank": len(rows) + 1, **when, of: float(values[i, j])})
     return pd.DataFrame(rows, columns=["rank", "departure", "arrival", of])
+
+
+def _iso(date: np.datetime64) -> str:
+    return str(date.astype("datetime64[m]")).removesuffix("T00:00")
 
 
 def shares_of(view: xr.Dataset) -> list[FlagShare]:
@@ -134,3 +140,89 @@ def shares_of(view: xr.Dataset) -> list[FlagShare]:
         FlagShare(title, float(np.mean((bits & mask) != 0)), float(np.mean(bits == mask)))
         for title, mask in zip(attrs["flag_titles"], attrs["flag_masks"], strict=True)
     ]
+
+
+C3 = "c3_km2_s2"
+HOSTILE = r"$\frac{x}_^$ <b>& 50% \alpha_{1} ^^ $$ #{} ~ `' \\ $"
+
+
+def many_limits(count: int) -> xr.Dataset:
+    departure, arrival = dates("2028-10-01", 124), dates("2029-04-01", 335)
+    free = porkchop(departure, arrival)
+    rng = np.random.default_rng(3)
+    slopes = rng.normal(size=(count, 2))
+    tilt, length = (free["dla_deg"].values - 10.0) / 20.0, (free["tof_days"].values - 250.0) / 80.0
+    limits = {
+        f"limit{k}": (
+            f"limited quantity number {k + 1} of the outer kind at most {k * 3.5:g} km/s",
+            a * tilt + b * length > 1.1 + 0.05 * k,
+        )
+        for k, (a, b) in enumerate(slopes)
+    }
+    return porkchop(departure, arrival, limits=limits)
+
+
+def fifteen_years() -> xr.Dataset:
+    departure, arrival = dates("2028-01-01", 548, 10.0), dates("2028-06-01", 584, 10.0)
+    tof = porkchop(departure, arrival)["tof_days"].values
+    limits = {"tof_days": ("flight time 100 to 400 days", (tof < 100) | (tof > 400))}
+    return porkchop(departure, arrival, limits=limits)
+
+
+def with_delivered_mass() -> xr.Dataset:
+    view = usual()
+    mass = (3000 - 20 * view[C3].values).astype(np.float32)
+    attrs = {"units": "kg", "symbol": "delivered mass", "long_name": "mass after capture"}
+    view["delivered_mass_kg"] = (("departure", "arrival"), mass, attrs)
+    return view.assign_attrs(rank_by="delivered_mass_kg", rank_order="most")
+
+
+def filled(value: float) -> xr.Dataset:
+    view = usual()
+    view[C3] = view[C3].copy(data=np.full(view[C3].shape, value, dtype=np.float32))
+    return view
+
+
+LONG_WORDS = {
+    "title": "A scenario with a very long name that goes on and on without an end " * 4,
+    "route": "Earth → Venus → Earth → Earth → Jupiter → Saturn → a body with a long name " * 2,
+    "caution": "Patched conics only, with a very long caution sentence that keeps going. " * 6,
+}
+
+# name -> (grid, candidates kept, days apart, lines)
+CASES: dict[str, tuple[Callable[[], xr.Dataset], int, float, str | None]] = {
+    "three limits": (usual, 12, 10, "v_inf_arrival_km_s"),
+    "a cluster of twenty": (usual, 20, 1, "v_inf_arrival_km_s"),
+    "no candidates": (usual, 0, 10, "tof_days"),
+    "five limits": (lambda: many_limits(4), 12, 10, "tof_days"),
+    "thirteen limits": (lambda: many_limits(12), 8, 10, "dla_deg"),
+    "one departure date": (lambda: porkchop(dates("2028-12-01", 1), dates("2029-04-01", 335)), 5, 10, None),
+    "one arrival date": (lambda: porkchop(dates("2028-10-01", 124), dates("2029-10-04", 1)), 5, 10, C3),
+    "one cell": (lambda: porkchop(dates("2028-12-01", 1), dates("2029-10-04", 1)), 1, 1, C3),
+    "two by two": (lambda: porkchop(dates("2028-11-30", 2), dates("2029-10-04", 2)), 4, 1, C3),
+    "steps of three hours": (
+        lambda: porkchop(dates("2028-12-01", 12, 1 / 8), dates("2029-10-04", 20, 1 / 8), c3_max=8.95),
+        6,
+        0.5,
+        "v_inf_arrival_km_s",
+    ),
+    "all forbidden": (lambda: usual(c3_max=5), 5, 5, "v_inf_arrival_km_s"),
+    "all allowed": (
+        lambda: porkchop(dates("2028-10-01", 124), dates("2029-04-01", 335), c3_max=None),
+        10,
+        20,
+        "arrival_mars_ls_deg",
+    ),
+    "fifteen years": (fifteen_years, 20, 30, None),
+    "arrival before departure": (
+        lambda: porkchop(dates("2028-10-01", 300), dates("2028-12-01", 300)),
+        6,
+        10,
+        "v_inf_arrival_km_s",
+    ),
+    "constant": (lambda: filled(12.5), 3, 10, C3),
+    "no values": (lambda: filled(np.nan), 3, 10, "v_inf_arrival_km_s"),
+    "hostile words": (lambda: usual(title=HOSTILE, route=HOSTILE, caution=HOSTILE), 3, 10, "dla_deg"),
+    "long words": (lambda: many_limits(9).assign_attrs(**LONG_WORDS), 20, 2, "v_inf_arrival_km_s"),
+    "coarse": (lambda: usual(12, 20), 6, 10, "v_inf_arrival_km_s"),
+}

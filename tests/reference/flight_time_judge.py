@@ -21,7 +21,7 @@ SERIES_TERMS = 22  # S1 < 0.09 there: (0.09 · 1.1)^22 < 1e-22
 
 @dataclass(frozen=True, eq=False)
 class Shape:
-    """Geometry of n problems, each (n,) longdouble: radii, chord, semiperimeter, lambda, c/s, normal (n, 3)."""
+    """Geometry of n problems, each (n,) longdouble; the normal (n, 3)."""
 
     n1: np.ndarray
     n2: np.ndarray
@@ -29,6 +29,8 @@ class Shape:
     s: np.ndarray
     lam: np.ndarray
     c_over_s: np.ndarray
+    rho: np.ndarray  # (|r1| - |r2|)/c
+    sigma: np.ndarray  # sqrt(1 - ρ²) = sqrt(2|r1||r2|(1 - cos θ))/c
     normal: np.ndarray
     sine: np.ndarray  # |sin θ|
 
@@ -39,15 +41,20 @@ class Shape:
 def shape(r1: np.ndarray, r2: np.ndarray, pole: np.ndarray) -> Shape:
     """Measure the triangle; lambda > 0 where the motion about the pole turns through less than 180°."""
     r1, r2 = np.asarray(r1, LONG), np.asarray(r2, LONG)
-    n1, n2, chord = _norm(r1), _norm(r2), _norm(r2 - r1)
+    way = r2 - r1  # exact for near neighbours, so that whatever is made of it keeps its digits
+    n1, n2, chord = _norm(r1), _norm(r2), _norm(way)
     s = (n1 + n2 + chord) / 2
-    cross, dot = np.cross(r1, r2), _dot(r1, r2)
+    cross, dot = np.cross(r1, way), _dot(r1, r2)
     area = _norm(cross)
     # n1·n2 + r1·r2 without cancellation on either side of 90°
     both = np.where(dot > 0, n1 * n2 + dot, area**2 / (n1 * n2 - np.minimum(dot, 0)))
     sign = np.where(_dot(cross, np.asarray(pole, LONG)) < 0, LONG(-1), LONG(1))
     normal = sign[:, None] * cross / area[:, None]
-    return Shape(n1, n2, chord, s, sign * np.sqrt(both / 2) / s, chord / s, normal, area / (n1 * n2))
+    rho = -_dot(way, r1 + r2) / ((n1 + n2) * chord)
+    cosine, sine = dot / (n1 * n2), area / (n1 * n2)
+    versine = np.where(cosine > 0, sine**2 / (1 + np.abs(cosine)), 1 - cosine)
+    sigma = np.sqrt(2 * n1 * n2 * versine) / chord
+    return Shape(n1, n2, chord, s, sign * np.sqrt(both / 2) / s, chord / s, rho, sigma, normal, sine)
 
 
 def time_scale(g: Shape, gm: float) -> np.ndarray:
@@ -110,31 +117,24 @@ def least_time(g: Shape, revs: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
 def recover_x(g: Shape, gm: float, r1, r2, v1, v2) -> tuple[np.ndarray, np.ndarray]:
     """Find x from the velocities, and how much half an ulp in each of their components can move it.
 
-    With γ = sqrt(gm s/2), ρ = (|r1| - |r2|)/c, σ² = 1 - ρ²:   r1·v1 - r2·v2 = 2γ(λy - x),
+    With γ = sqrt(gm s/2):   r1·v1 - r2·v2 = 2γ(λy - x),
     r1·v1 + r2·v2 = -2γρ(λy + x),   |r1 × v1| = γσ(y + λx).  The first always serves; of the other two, the
     one whose factor is not small.
     """
     r1, r2, v1, v2 = (np.asarray(a, LONG) for a in (r1, r2, v1, v2))
     gamma = np.sqrt(LONG(gm) * g.s / 2)
-    rho = (g.n1 - g.n2) / g.chord
-    sigma = np.sqrt(2 * g.n1 * g.n2 * _one_minus_cosine(g, r1, r2)) / g.chord
     d = (_dot(r1, v1) - _dot(r2, v2)) / (2 * gamma)
     d_error = (_dot(np.abs(r1), np.abs(v1)) + _dot(np.abs(r2), np.abs(v2))) / (2 * gamma) * HALF_ULP
     with np.errstate(divide="ignore", invalid="ignore"):
-        e = -(_dot(r1, v1) + _dot(r2, v2)) / (2 * gamma * rho)
-        h = _dot(np.cross(r1, v1), g.normal) / (gamma * sigma)
-        h_error = g.n1 * _norm(v1) / (gamma * sigma) * HALF_ULP
-        by_radial = np.abs(rho) > sigma
+        e = -(_dot(r1, v1) + _dot(r2, v2)) / (2 * gamma * g.rho)
+        h = _dot(np.cross(r1, v1), g.normal) / (gamma * g.sigma)
+        h_error = g.n1 * _norm(v1) / (gamma * g.sigma) * HALF_ULP
+        by_radial = np.abs(g.rho) > g.sigma
         x = np.where(by_radial, (e - d) / 2, (g.lam * h - d) / (1 + g.lam**2))
         error = np.where(
-            by_radial, d_error * (1 + 1 / np.abs(rho)) / 2, (np.abs(g.lam) * h_error + d_error) / (1 + g.lam**2)
+            by_radial, d_error * (1 + 1 / np.abs(g.rho)) / 2, (np.abs(g.lam) * h_error + d_error) / (1 + g.lam**2)
         )
     return x, error
-
-
-def _one_minus_cosine(g: Shape, r1: np.ndarray, r2: np.ndarray) -> np.ndarray:
-    cosine = _dot(r1, r2) / (g.n1 * g.n2)
-    return np.where(cosine > 0, g.sine**2 / (1 + np.abs(cosine)), 1 - cosine)
 
 
 def time_residual(g: Shape, x: np.ndarray, x_error: np.ndarray, revs, tof, gm: float):
@@ -148,16 +148,14 @@ def time_residual(g: Shape, x: np.ndarray, x_error: np.ndarray, revs, tof, gm: f
 def velocities(g: Shape, x: np.ndarray, gm: float, r1, r2) -> tuple[np.ndarray, np.ndarray]:
     """Velocities (n, 3) longdouble of the conic x through both points: Izzo 2015, the last equations."""
     gamma = np.sqrt(LONG(gm) * g.s / 2)
-    rho = (g.n1 - g.n2) / g.chord
-    sigma = np.sqrt(2 * g.n1 * g.n2 * _one_minus_cosine(g, np.asarray(r1, LONG), np.asarray(r2, LONG))) / g.chord
     y = np.sqrt(g.c_over_s + (g.lam * x) ** 2)
     # (y + λx) = (c/s)/(y - λx): take the form that does not cancel
     total = np.where(g.lam * x < 0, g.c_over_s / (y + np.abs(g.lam * x)), y + g.lam * x)
     out = []
     for r, n, sign in ((r1, g.n1, 1), (r2, g.n2, -1)):
-        radial = gamma * (sign * (g.lam * y - x) - rho * (g.lam * y + x)) / n
+        radial = gamma * (sign * (g.lam * y - x) - g.rho * (g.lam * y + x)) / n
         unit = np.asarray(r, LONG) / n[:, None]
-        out.append(radial[:, None] * unit + (gamma * sigma * total / n)[:, None] * np.cross(g.normal, unit))
+        out.append(radial[:, None] * unit + (gamma * g.sigma * total / n)[:, None] * np.cross(g.normal, unit))
     return out[0], out[1]
 
 

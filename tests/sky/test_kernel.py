@@ -172,9 +172,17 @@ def test_coverage_is_that_of_the_body_and_of_what_it_hangs_on(tmp_path):
     ephemeris = open_ephemeris([path])
     assert ephemeris.coverage(TERN) == pytest.approx((FIRST, LAST))
     assert ephemeris.coverage(BODIES["mars"]) == (2287184.5, 2688976.5)  # comment area of DE440
-    hub = write_spk(tmp_path / "hub.bsp", straight_line(body=20650002, last=FIRST + 50.0))
+    late = write_spk(
+        tmp_path / "late.bsp", straight_line(body=20650002, first=FIRST + 50.0, last=LAST + 50.0)
+    )
     hung = write_spk(tmp_path / "hung.bsp", straight_line(center=20650002))
-    assert open_ephemeris([hub, hung]).coverage(TERN) == pytest.approx((FIRST, FIRST + 50.0))
+    assert open_ephemeris([late, hung]).coverage(TERN) == pytest.approx((FIRST + 50.0, LAST))
+    early = write_spk(tmp_path / "early.bsp", straight_line(body=20650002, last=FIRST + 50.0))
+    assert open_ephemeris([early, hung]).coverage(TERN) == pytest.approx((FIRST, FIRST + 50.0))
+    position, _ = open_ephemeris([late, hung]).states(TERN, np.array([FIRST + 60.0]))
+    assert np.isfinite(position).all()
+    (fault,) = faults_of(lambda: open_ephemeris([late, hung]).states(TERN, np.array([FIRST + 40.0])))
+    assert "tern: 2028-09-26 is outside" in fault
 
 
 def test_the_sun_is_at_the_centre_on_any_date():

@@ -5,7 +5,7 @@ import datetime as dt
 import numpy as np
 import pytest
 
-from porkgrid.sky.bodies import BODIES
+from porkgrid.sky.bodies import BODIES, pole_axes
 from porkgrid.sky.epochs import jd_from_date
 from porkgrid.sky.kernel import open_ephemeris
 from porkgrid.sky.seasons import mars_ls_deg
@@ -33,3 +33,16 @@ def test_ls_rises_by_a_full_turn_in_a_mars_year_and_fastest_near_perihelion():
     assert (rise > 0.0).all()
     # Mars passes perihelion at Ls = 251 degrees (memory; Allison and McEwen 2000).
     assert ls[np.argmax(rise)] == pytest.approx(251.0, abs=3.0)
+
+
+def test_the_pole_precesses_about_the_orbit_at_the_measured_rate():
+    # 7594 milliarcseconds a year, backwards (Konopliv and others 2006; memory).
+    years = 100.0
+    dates = 2451545.0 + np.array([0.0, years * 365.25])
+    poles = pole_axes(BODIES["mars"], dates)[:, 2]
+    position, velocity = open_ephemeris().states(BODIES["mars"], dates)
+    normal = np.cross(position[:, 0], velocity[:, 0])
+    normal /= np.linalg.norm(normal)
+    backwards = -np.radians(7.594 * years / 3600.0) * np.cross(normal, poles[0])
+    moved = poles[1] - poles[0]
+    assert np.linalg.norm(moved - backwards) <= 0.03 * np.linalg.norm(backwards)

@@ -10,12 +10,12 @@ from typing import Any
 
 from pydantic import BaseModel, ConfigDict
 
-from porkgrid import _scenario_sections as sections
-from porkgrid._faults import Fault
-from porkgrid._scenario_bodies import BodySpec, body_of
-from porkgrid._scenario_parts import Encounter, Flyby, Leg, Limit, Orbit, Parking, Rank
-from porkgrid._scenario_sections import Outline
-from porkgrid._scenario_text import parse_toml, read_text
+from porkgrid.scenario import sections
+from porkgrid.scenario.bodies import BodySpec, body_of
+from porkgrid.scenario.faults import Fault
+from porkgrid.scenario.parts import Encounter, Flyby, Leg, Limit, Orbit, Parking, Rank
+from porkgrid.scenario.sections import Outline
+from porkgrid.scenario.text import parse_toml, read_text
 from porkgrid.sky.bodies import Body
 
 __all__ = [
@@ -84,8 +84,11 @@ class Draft:
     scenario: Scenario | None = None  # None where there are faults
 
 
-def read_scenario(path: str | Path) -> Draft:
-    """Read a scenario file and check its structure; faults of any kind are in the draft, none are raised."""
+def read_scenario(path: str | Path, beside: Path | None = None) -> Draft:
+    """Read a scenario file and check its structure; faults of any kind are in the draft, none are raised.
+
+    Relative paths of kernels count from the folder `beside`, by default the file's own.
+    """
     path = Path(path)
     text, faults = read_text(path)
     if faults:
@@ -93,10 +96,10 @@ def read_scenario(path: str | Path) -> Draft:
     table, faults = parse_toml(text)
     if faults:
         return Draft(path, tuple(faults))
-    return _draft(path, text, table)
+    return _draft(path, text, table, path.parent if beside is None else beside)
 
 
-def _draft(path: Path, text: str, table: dict[str, Any]) -> Draft:
+def _draft(path: Path, text: str, table: dict[str, Any], beside: Path) -> Draft:
     heading, heading_faults = sections.read_heading(table)
     outlines, encounter_faults = sections.read_encounters(table)
     legs, leg_faults = sections.read_legs(table, len(outlines))
@@ -107,7 +110,7 @@ def _draft(path: Path, text: str, table: dict[str, Any]) -> Draft:
     measures, measure_faults = sections.read_texts(table, "measures", '["c3_km2_s2", "tof_days"]')
     faults = [*sections.unknown_keys(table), *heading_faults, *encounter_faults, *leg_faults, *limit_faults]
     faults += [*rank_faults, *kernel_faults, *body_faults, *measure_faults]
-    kernels = tuple(path.parent / each for each in kernel_names or ())  # absolute paths stay as they are
+    kernels = tuple(beside / each for each in kernel_names or ())  # absolute paths stay as they are
     scenario = None
     if heading is not None and not faults:
         scenario = Scenario(

@@ -14,8 +14,8 @@ import numpy as np
 from pydantic import BaseModel, BeforeValidator, ConfigDict, Field, ValidationInfo, field_validator
 from pydantic_core import PydanticCustomError
 
-from porkgrid._faults import shown
 from porkgrid.physics.constants import DAY_S
+from porkgrid.scenario.faults import shown
 from porkgrid.sky.epochs import jd_from_date
 
 MAX_DATES = 1_000_000  # per encounter: a day's step for 2700 years

@@ -7,9 +7,9 @@ from typing import Any, TypeVar
 
 from pydantic import Field
 
-from porkgrid._faults import Fault
-from porkgrid._scenario_parts import Epoch, Part
 from porkgrid.physics.constants import AU_KM, GM_SUN_KM3_S2
+from porkgrid.scenario.faults import Fault
+from porkgrid.scenario.parts import Epoch, Part
 from porkgrid.sky.bodies import Body
 from porkgrid.sky.elements import Elements, perihelion_epoch_jd
 from porkgrid.sky.epochs import jd_from_date

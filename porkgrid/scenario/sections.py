@@ -13,9 +13,9 @@ from typing import Any, TypeVar
 
 from pydantic import Field, ValidationError, field_validator
 
-from porkgrid._faults import Fault, broken_fields, faults_of, nearest, printable, shown
-from porkgrid._scenario_bodies import BodySpec, combination_faults
-from porkgrid._scenario_parts import LONGEST_NAME, Encounter, Flyby, Leg, Limit, Part, Rank, refusal
+from porkgrid.scenario.bodies import BodySpec, combination_faults
+from porkgrid.scenario.faults import Fault, broken_fields, faults_of, nearest, printable, shown
+from porkgrid.scenario.parts import LONGEST_NAME, Encounter, Flyby, Leg, Limit, Part, Rank, refusal
 from porkgrid.sky.bodies import BODIES
 
 MAX_ENCOUNTERS = 10  # practice: flown designs have up to about that many

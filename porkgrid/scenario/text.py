@@ -7,7 +7,7 @@ import tomllib
 from pathlib import Path
 from typing import Any
 
-from porkgrid._faults import Fault
+from porkgrid.scenario.faults import Fault
 
 LARGEST_BYTES = 1_000_000  # a scenario is a few kilobytes; more is the wrong file
 
