@@ -2,8 +2,9 @@
 
 from __future__ import annotations
 
+from typing import TYPE_CHECKING
+
 import numpy as np
-import pandas as pd
 import xarray as xr
 from matplotlib.axes import Axes
 from matplotlib.figure import Figure
@@ -33,6 +34,9 @@ from porkgrid.figures.strips import draw_arrival_strip, draw_departure_strip
 from porkgrid.figures.style import SMALL_PT, SOFT_INK, new_slide
 from porkgrid.figures.text import one_line, put, wrap
 from porkgrid.survey.view import DayBests
+
+if TYPE_CHECKING:
+    import pandas as pd
 
 PANEL_BOX = Box(1.00, 2.20, 7.80, 6.15)
 _DEPARTURE_BOX = Box(1.00, 0.95, 7.80, 1.85)

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterable
+
 import numpy as np
 
 _MS_PER_DAY = 86_400_000.0
@@ -19,6 +21,11 @@ def days_from_dates(dates: np.ndarray) -> np.ndarray:
 def dates_from_days(days: np.ndarray | float) -> np.ndarray:
     """Return float days since 1970-01-01 as datetime64[ms], to the nearest millisecond."""
     return np.round(np.asarray(days, dtype=float) * _MS_PER_DAY).astype(np.int64).astype("datetime64[ms]")
+
+
+def dates_from_iso(texts: Iterable[str]) -> np.ndarray:
+    """Return ISO dates, with or without a time of day (2028-11-30, 2028-11-30T12:00), as datetime64[ms]."""
+    return np.array([str(text) for text in texts], dtype="datetime64[ms]")
 
 
 def iso_day(date: np.datetime64) -> str:

@@ -4,16 +4,20 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from typing import TYPE_CHECKING
 
 import numpy as np
-import pandas as pd
 from matplotlib.axes import Axes
 
+from porkgrid.figures.dates import dates_from_iso
 from porkgrid.figures.levels import Scale, value_text
 from porkgrid.figures.marks import add_area, add_line, add_pixels, add_rectangle, add_segments
 from porkgrid.figures.measured import Measured
 from porkgrid.figures.style import BODY_PT, FAINT_INK, PIXELS_PER_INCH, SMALL_PT, SOFT_INK
 from porkgrid.figures.text import line_height_in, put, shorten, width_in, wrap
+
+if TYPE_CHECKING:
+    import pandas as pd
 
 _SWATCH_W, _SWATCH_H = 0.34, 0.15
 _TEXT_GAP = 0.10
@@ -114,17 +118,10 @@ def draw_candidate_table(
     column.heading("Candidates")
     room = int((column.y - 0.07 - column.bottom) / _ROW) - 1  # below the line of heads
     shown = len(candidates) if len(candidates) <= room else max(room - 1, 0)
-    departures = pd.to_datetime(candidates["departure"][:shown])
-    arrivals = pd.to_datetime(candidates["arrival"][:shown])
-    flights = (arrivals - departures) / pd.Timedelta(days=1)
+    rows = _dates_and_flights(candidates[:shown])
     value_room = (1.0 - _LEFT_PART) * column.width - 0.1
     head = shorten(measured.title, value_room, SMALL_PT) if measured.name in candidates else ""
 
-    form = "%Y-%m-%d" if (departures.dt.hour + arrivals.dt.hour == 0).all() else "%Y-%m-%dT%H"
-    rows = [
-        (str(i + 1), format(departure, form), format(arrival, form), f"{days:.0f}")
-        for i, (departure, arrival, days) in enumerate(zip(departures, arrivals, flights, strict=True))
-    ]
     widths = (2, *(_GAP_DIGITS + len(cell) for cell in rows[0][1:3]), _GAP_DIGITS + 4) if rows else ()
     _table_heads(column, widths, head)
     rule = column.y - 0.05
@@ -139,6 +136,18 @@ def draw_candidate_table(
         put(column.sheet, column.left, column.y, rest, SMALL_PT, color=SOFT_INK)
 
 
+def _dates_and_flights(candidates: pd.DataFrame) -> list[tuple[str, str, str, str]]:
+    """Return number, departure, arrival and days of flight; dates to the day or, if need be, hour."""
+    departures, arrivals = dates_from_iso(candidates["departure"]), dates_from_iso(candidates["arrival"])
+    flights = (arrivals - departures) / np.timedelta64(1, "D")
+    dates = np.concatenate([departures, arrivals])
+    unit = "datetime64[D]" if (dates == dates.astype("datetime64[D]")).all() else "datetime64[h]"
+    return [
+        (str(i + 1), str(departure.astype(unit)), str(arrival.astype(unit)), f"{days:.0f}")
+        for i, (departure, arrival, days) in enumerate(zip(departures, arrivals, flights, strict=True))
+    ]
+
+
 def _table_heads(column: Column, widths: Sequence[int], value_head: str) -> None:
     """Write the heads over the right edges of the cells, whose widths are given in digits."""
     column.y -= _ROW
@@ -151,7 +160,7 @@ def _table_heads(column: Column, widths: Sequence[int], value_head: str) -> None
 
 
 def _table_row(column: Column, widths: Sequence[int], cells: Sequence[str], value: str) -> None:
-    """Write one row as two texts: the cells are all digits, and padded with blanks as wide as a digit."""
+    """Write one row as two texts; cells of digits are padded with blanks as wide as a digit."""
     column.y -= _ROW
     right = column.left + _LEFT_PART * column.width
     padded = "".join(cell.rjust(width, _FIGURE_SPACE) for cell, width in zip(cells, widths, strict=True))

@@ -3,14 +3,13 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
-import pandas as pd
 from matplotlib.axes import Axes
 from matplotlib.patheffects import withStroke
 
-from porkgrid.figures.dates import days_from_dates
+from porkgrid.figures.dates import dates_from_iso, days_from_dates
 from porkgrid.figures.levels import range_that_matters, round_levels, value_text
 from porkgrid.figures.marks import add_line, add_segments
 from porkgrid.figures.measured import Measured
@@ -19,6 +18,9 @@ from porkgrid.figures.placement import Room, place_markers, place_on_line
 from porkgrid.figures.raster import cut_turns
 from porkgrid.figures.style import ACCENT, INK, SMALL_PT
 from porkgrid.figures.text import put, width_in
+
+if TYPE_CHECKING:
+    import pandas as pd
 
 LINE_INK = "#7a1f00"
 _MARKER_IN = 0.205
@@ -100,8 +102,8 @@ def draw_candidates(
 
     Candidates outside the panel are left out; in too dense a cluster the last keep only their dots.
     """
-    x = panel.x_at(days_from_dates(pd.to_datetime(candidates["departure"]).to_numpy()))
-    y = panel.y_at(days_from_dates(pd.to_datetime(candidates["arrival"]).to_numpy()))
+    x = panel.x_at(days_from_dates(dates_from_iso(candidates["departure"])))
+    y = panel.y_at(days_from_dates(dates_from_iso(candidates["arrival"])))
     box = panel.box
     inside = np.flatnonzero((x >= box.left) & (x <= box.right) & (y >= box.bottom) & (y <= box.top))
     points = [(float(x[i]), float(y[i])) for i in inside]

@@ -16,14 +16,15 @@ _RAMP_OKLAB = np.array(
     ]
 )
 
-# Okabe and Ito (2008), "Color Universal Design", without black; ordered so that neighbours differ most.
+# Okabe and Ito (2008), "Color Universal Design", without black, and without vermilion,
+# which is too near orange once both are paled; ordered so that neighbours differ most.
 LIMIT_COLOURS = np.array(
     [
         (230, 159, 0),
         (0, 114, 178),
         (204, 121, 167),
         (0, 158, 115),
-        (213, 94, 0),
+        (240, 228, 66),
         (86, 180, 233),
     ]
 ) / 255.0  # fmt: skip

@@ -52,8 +52,9 @@ class Raster:
         x0, x1, fx = _neighbours(self.departure, self.x_px)
         y0, y1, fy = _neighbours(self.arrival, self.y_px)
         turned = np.ascontiguousarray(cut_turns(grid, unit).T)
-        lines = turned[y0] + fy[:, None] * (turned[y1] - turned[y0])
-        value = lines[:, x0] + fx * (lines[:, x1] - lines[:, x0])
+        down, across = fy.astype(turned.dtype)[:, None], fx.astype(turned.dtype)
+        lines = turned[y0] + down * (turned[y1] - turned[y0])
+        value = lines[:, x0] + across * (lines[:, x1] - lines[:, x0])
         return np.where(np.isfinite(value), value, self.cells(grid))
 
 
@@ -82,4 +83,4 @@ def _neighbours(centres: np.ndarray, pixels: np.ndarray) -> tuple[np.ndarray, np
     """Return for each pixel the cells on either side of it and how far between their centres it lies."""
     at = np.interp(pixels, centres, np.arange(centres.size, dtype=float))
     low = np.minimum(at.astype(np.intp), max(centres.size - 2, 0))
-    return low, np.minimum(low + 1, centres.size - 1), (at - low).astype(np.float32)
+    return low, np.minimum(low + 1, centres.size - 1), at - low

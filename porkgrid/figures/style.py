@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import os
 from collections.abc import Sequence
+from contextlib import suppress
 from pathlib import Path
 from typing import Any
 
@@ -33,7 +34,7 @@ _SETTINGS: Any = {
     "font.family": ["DejaVu Sans"],  # comes with matplotlib: same widths on every machine
     "svg.hashsalt": "porkgrid",  # the same ids in the same figure every time
     "svg.fonttype": "path",
-    "pdf.fonttype": 42,
+    "pdf.fonttype": 42,  # whole letters: text can be selected and edited
 }
 _METADATA: dict[str, dict[str, Any]] = {
     "png": {"Software": None},
@@ -104,5 +105,8 @@ def _write(figure: Figure, path: Path, name: str) -> Path:
     except OSError as fault:
         raise RunError(f"cannot write the figure {path}: {fault.strerror or fault}") from fault
     finally:
-        temporary.unlink(missing_ok=True)
+        with suppress(
+            OSError
+        ):  # it is gone, or its folder is what failed: the first fault is the one to tell
+            temporary.unlink()
     return path

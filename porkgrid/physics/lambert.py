@@ -21,7 +21,7 @@ from numpy.typing import ArrayLike
 
 from porkgrid.physics.constants import OBLIQUITY_J2000_ARCSEC
 from porkgrid.physics.products import cross
-from porkgrid.physics.timeflight import PLAIN, ROW, SETTLED, U_MAX_ROW, halley_row, start_row
+from porkgrid.physics.timeflight import PLAIN, ROW, SETTLED, U_MAX_ROW, halley_row, halley_step, start_row
 from porkgrid.physics.timeroot import solve
 
 _OBLIQUITY = math.radians(OBLIQUITY_J2000_ARCSEC / 3600.0)
@@ -40,10 +40,16 @@ _LEAST_P_ROW = 1e-3
 # Rows of scratch that one call of `lambert_row` needs.
 SCRATCH_ROWS = 10
 
+# Problems a call of `lambert_row` should get: its twenty or so arrays then stay in the second-level cache.
+BLOCK = 512
+
 
 @njit(**ROW)
-def _geometry_row(r1, r2, tof, gm, pole, way, sigma, delta, t, sine2):
-    """Scaled problem: σ, δ = 1 − |σ|, the time t, and sin²θ. `way` is +1 prograde, −1 retrograde."""
+def _geometry_row(r1, r2, tof, gm, pole, way, d1, d2, sigma, delta, t, sine2):
+    """Radii d1, d2, and the scaled problem: σ, δ = 1 − |σ|, the time t, and sin²θ.
+
+    `way` is +1 prograde, −1 retrograde.
+    """
     for j in range(tof.shape[0]):
         ax, ay, az = r1[0, j], r1[1, j], r1[2, j]
         bx, by, bz = r2[0, j], r2[1, j], r2[2, j]
@@ -61,6 +67,7 @@ def _geometry_row(r1, r2, tof, gm, pole, way, sigma, delta, t, sine2):
         up = (nx * pole[0] + ny * pole[1] + nz * pole[2]) * way
         sigma[j] = size if up >= 0.0 else -size
         per_total = 1.0 / total
+        d1[j], d2[j] = a, b
         delta[j] = (dx * dx + dy * dy + dz * dz) * per_total * per_total / (1.0 + size)
         t[j] = tof[j] * per_total * math.sqrt(2.0 * gm * per_total)
         sine2[j] = n2 / (a * a * b * b)
@@ -77,13 +84,13 @@ def _finish_row(sigma, delta, q, p, h):
 
 
 @njit(**ROW)
-def _velocity_row(r1, r2, gm, sigma, p, h, v1, v2):
+def _velocity_row(r1, r2, gm, d1, d2, sigma, p, h, v1, v2):
+    """Velocities (3, m) from the shape; the formulas are in the module's docstring."""
     for j in range(p.shape[0]):
         ax, ay, az = r1[0, j], r1[1, j], r1[2, j]
         bx, by, bz = r2[0, j], r2[1, j], r2[2, j]
         nx, ny, nz = cross(ax, ay, az, bx, by, bz)
-        a = math.sqrt(ax * ax + ay * ay + az * az)
-        b = math.sqrt(bx * bx + by * by + bz * bz)
+        a, b = d1[j], d2[j]
         total = a + b
         # r2 − r1 as a difference of squares keeps its digits where the radii are nearly equal
         rise = ((bx - ax) * (bx + ax) + (by - ay) * (by + ay) + (bz - az) * (bz + az)) / total
@@ -104,28 +111,49 @@ def _velocity_row(r1, r2, gm, sigma, p, h, v1, v2):
         v2[2, j] = radial * bz + turn * (nx * by - ny * bx)
 
 
-@njit(**PLAIN)
+@njit(**ROW)
 def _sort_out_row(t, sine2, status):
     """Mark the problems that have no answer before they are tried."""
     for j in range(t.shape[0]):
-        if not (math.isfinite(t[j]) and math.isfinite(sine2[j])):
-            status[j] = BAD_INPUT
-        elif t[j] <= 0.0:
-            status[j] = NOT_AFTER
-        elif sine2[j] < _LEAST_SINE * _LEAST_SINE:
-            status[j] = NO_PLANE
-        else:
-            status[j] = FLOWN
+        code = NO_PLANE if sine2[j] < _LEAST_SINE * _LEAST_SINE else FLOWN
+        code = NOT_AFTER if t[j] <= 0.0 else code
+        # x − x is 0 for finite x only
+        status[j] = code if (t[j] - t[j]) + (sine2[j] - sine2[j]) == 0.0 else BAD_INPUT
+
+
+@njit(**ROW)
+def _count_unsettled(q, error, p, status):
+    """How many problems the Halley steps have not settled, those without an answer included."""
+    count = 0
+    for j in range(q.shape[0]):
+        settled = (abs(error[j]) < SETTLED) & (q[j] < 1.0 + U_MAX_ROW) & (p[j] > _LEAST_P_ROW)
+        count += 0 if settled & (status[j] == FLOWN) else 1
+    return count
 
 
 @njit(**PLAIN)
 def _settle_row(sigma, delta, t, q, error, p, h, status):
-    """Solve one by one what two Halley steps have not settled."""
+    """Finish what two Halley steps have not settled: with more of them, else in a bracket."""
+    if _count_unsettled(q, error, p, status) == 0:
+        return
     for j in range(t.shape[0]):
         if status[j] != FLOWN:
             p[j] = h[j] = math.nan
         elif not (abs(error[j]) < SETTLED and q[j] < 1.0 + U_MAX_ROW and p[j] > _LEAST_P_ROW):
-            p[j], h[j], _ = solve(sigma[j], delta[j], t[j], 0, False)
+            p[j], h[j] = _settle(sigma[j], delta[j], t[j], q[j])
+
+
+@njit(**PLAIN)
+def _settle(sigma, delta, t, q):
+    above = 1.0 + sigma if sigma > 0.0 else delta
+    for _ in range(3):
+        if not (0.0 < q < 1.0 + U_MAX_ROW and above - sigma * q > _LEAST_P_ROW):
+            break
+        q, error = halley_step(sigma, delta, t, q)
+        if abs(error) < SETTLED and above - sigma * q > _LEAST_P_ROW:
+            return above - sigma * q, above - q
+    p, h, _ = solve(sigma, delta, t, 0, False)
+    return p, h
 
 
 @njit(**PLAIN)
@@ -147,7 +175,8 @@ def lambert_row(r1, r2, tof, gm, pole, way, revs, right, scratch, v1, v2, status
     """
     sigma, delta, t, sine2 = scratch[0], scratch[1], scratch[2], scratch[3]
     q, error, p, h = scratch[4], scratch[5], scratch[6], scratch[7]
-    _geometry_row(r1, r2, tof, gm, pole, way, sigma, delta, t, sine2)
+    d1, d2 = scratch[8], scratch[9]
+    _geometry_row(r1, r2, tof, gm, pole, way, d1, d2, sigma, delta, t, sine2)
     _sort_out_row(t, sine2, status)
     if revs == 0:
         start_row(sigma, delta, t, q)
@@ -157,13 +186,13 @@ def lambert_row(r1, r2, tof, gm, pole, way, revs, right, scratch, v1, v2, status
         _settle_row(sigma, delta, t, q, error, p, h, status)
     else:
         _revolutions_row(sigma, delta, t, revs, right, p, h, status)
-    _velocity_row(r1, r2, gm, sigma, p, h, v1, v2)
+    _velocity_row(r1, r2, gm, d1, d2, sigma, p, h, v1, v2)
 
 
 @njit(**PLAIN)
 def _lambert_blocks(r1, r2, tof, gm, pole, way, revs, right, v1, v2, status):
-    """`lambert_row` over long arrays, a cache-sized block at a time."""
-    size = 1024
+    """`lambert_row` over long arrays, a block at a time."""
+    size = min(BLOCK, tof.shape[0])
     scratch = np.empty((SCRATCH_ROWS, size))
     a, b, c, d = np.empty((3, size)), np.empty((3, size)), np.empty((3, size)), np.empty((3, size))
     for start in range(0, tof.shape[0], size):

@@ -49,7 +49,10 @@ _NEAR_PARABOLA = 1e-4
 
 # Relative error of the time before the last Halley step below which that step has settled the root:
 # its error is cubic in this one (tests/physics/test_timeflight.py measures it).
-SETTLED = 1e-5
+SETTLED = 2e-5
+
+# F = 1/(u + κ): κ is ½ on a parabola and more by this at u = 0.
+_KAPPA_RISE = 2.0 / math.pi - 0.5
 
 HALF_PI_23 = math.pi ** (2 / 3) / 2
 
@@ -102,9 +105,10 @@ def _inverse_cube_root(x):
 def start_row(sigma, delta, t, q):
     """Fill q with starting values for transfers without revolutions; within a few per cent.
 
-    Hyperbola: with F ≈ 1/(u + κ), exact at the parabola for κ = ½, the time equation turns into a quadratic.
-    Ellipse: q/y, or y/q for σ < −0.3, with y = t^(−2/3), is nearly linear in y, because t ~ q^(−3/2) as
-    q → 0; a parabola through the known points q = 0, u = 0 and u = 1.
+    Hyperbolas, and ellipses with u > 0 for σ > 0.3: with F ≈ 1/(u + κ), κ between its known values, the time
+    equation turns into a quadratic.
+    Other ellipses: t ~ q^(−3/2) as q → 0, so with y = t^(−2/3) the quotient q/y (y/q for σ < −0.3) varies
+    little; it is taken from a parabola in y through its known values at q = 0, u = 0 and u = 1.
     """
     for j in range(t.shape[0]):
         s, d, tj = sigma[j], delta[j], t[j]
@@ -112,18 +116,21 @@ def start_row(sigma, delta, t, q):
         above = 1.0 + s if s > 0.0 else d  # 1 + σ
         parabolic = math.sqrt(below) * (2.0 + s) * (1.0 / 3.0)
 
+        middle = s + 0.5 * math.pi
         # x^(−1/3) of t, t(u = 0) and t(u = 1)
         ct = _inverse_cube_root(tj)
-        c0 = _inverse_cube_root(s + 0.5 * math.pi)
+        c0 = _inverse_cube_root(middle)
         c1 = _inverse_cube_root(parabolic)
 
-        ratio = min(tj / parabolic, 1.0)
-        kappa = 0.5 * (1.0 + (0.45 - 0.75 * s) * (ratio - 1.0))
+        hyperbola = tj < parabolic
+        beyond = tj - parabolic
+        bent = (0.45 - 0.75 * s) * beyond / parabolic
+        kappa = 0.5 + (0.5 * bent if hyperbola else _KAPPA_RISE * beyond / (middle - parabolic))
         k = 1.0 + s * kappa
         fast = 2.0 * k * k / (s * k + math.sqrt(s * s * k * k + 4.0 * tj * tj * k)) - kappa
 
         y, y0, y1 = ct * ct, c0 * c0, c1 * c1
-        per_y0, per_y1 = (s + 0.5 * math.pi) * c0, parabolic * c1
+        per_y0, per_y1 = middle * c0, parabolic * c1
         slope = above * HALF_PI_23  # dq/dy at q = 0
         flip = s < -0.3
         g0 = 1.0 if flip else slope
@@ -133,41 +140,45 @@ def start_row(sigma, delta, t, q):
         g = g0 * span + y * (d1 * span + (d2 - d1) * (y - y0))
         slow = y * (slope * span if flip else g) / (g if flip else span)
 
-        q[j] = slow if tj >= parabolic else 1.0 + fast
+        q[j] = 1.0 + fast if hyperbola or (s > 0.3 and tj < middle) else slow
 
 
-@njit(**ROW)
-def halley_row(sigma, delta, t, q, error):
-    """One Halley step on every q; error gets the relative error of the time before the step.
+@njit(**ROW, inline="always")
+def halley_step(s, d, t, q):
+    """One Halley step from q <= 17: (new q, relative error of the time before the step).
 
     Halley's method on t^m, with m chosen so that t^m is nearly linear in u: −2/3 on ellipses, −2 on
     hyperbolas beyond 180°, 2 on hyperbolas below.
     """
+    above = 1.0 + s if s > 0.0 else d
+    u = q - 1.0
+    x = 1.0 - u
+    p = above - s * q
+    near = abs(x) < _NEAR_PARABOLA
+    # F and 1/(1 − u²) from one division
+    numerator, rest = _half_angle_quotient(q)
+    x_safe = 1.0 if near else x
+    r = 1.0 / (rest * q * x_safe)
+    f = numerator * x_safe * r
+    i = rest * r
+    f1 = -(_T1 + x * (2.0 * _T2 + x * 3.0 * _T3)) if near else (3.0 * u * f - 2.0) * i
+    f2 = 2.0 * _T2 + x * (6.0 * _T3 + x * 12.0 * _T4) if near else (3.0 * f + 5.0 * u * f1) * i
+
+    # t = √p g, t' = √p a, t'' = √p b
+    root = math.sqrt(p)
+    half = 0.5 * s / p
+    g = s + p * f
+    a = p * f1 - 1.5 * s * f - s * half
+    b = p * f2 - 2.5 * s * f1 - 2.0 * s * half * half - half * a
+    e = t / (root * g) - 1.0
+
+    m1 = (-3.0 if s < 0.0 else 1.0) if u > 1.0 else -5.0 / 3.0  # m − 1
+    n = e * (1.0 + 0.5 * m1 * e * (1.0 + (m1 - 1.0) * e * (1.0 / 3.0)))  # ((1 + e)^m − 1)/m
+    return q + n * g * a / (a * a + 0.5 * n * (g * b + m1 * a * a)), e
+
+
+@njit(**ROW)
+def halley_row(sigma, delta, t, q, error):
+    """One Halley step on every q; error gets the relative error of the time before the step."""
     for j in range(t.shape[0]):
-        s, d, qj = sigma[j], delta[j], q[j]
-        above = 1.0 + s if s > 0.0 else d
-        u = qj - 1.0
-        x = 1.0 - u
-        p = above - s * qj
-        near = abs(x) < _NEAR_PARABOLA
-        # F and 1/(1 − u²) from one division
-        numerator, rest = _half_angle_quotient(qj)
-        x_safe = 1.0 if near else x
-        r = 1.0 / (rest * qj * x_safe)
-        f = numerator * x_safe * r
-        i = rest * r
-        f1 = -(_T1 + x * (2.0 * _T2 + x * 3.0 * _T3)) if near else (3.0 * u * f - 2.0) * i
-        f2 = 2.0 * _T2 + x * (6.0 * _T3 + x * 12.0 * _T4) if near else (3.0 * f + 5.0 * u * f1) * i
-
-        # t = √p g, t' = √p a, t'' = √p b
-        root = math.sqrt(p)
-        half = 0.5 * s / p
-        g = s + p * f
-        a = p * f1 - 1.5 * s * f - s * half
-        b = p * f2 - 2.5 * s * f1 - 2.0 * s * half * half - half * a
-        e = t[j] / (root * g) - 1.0
-
-        m1 = (-3.0 if s < 0.0 else 1.0) if u > 1.0 else -5.0 / 3.0  # m − 1
-        n = e * (1.0 + 0.5 * m1 * e * (1.0 + (m1 - 1.0) * e * (1.0 / 3.0)))  # ((1 + e)^m − 1)/m
-        q[j] = qj + n * g * a / (a * a + 0.5 * n * (g * b + m1 * a * a))
-        error[j] = e
+        q[j], error[j] = halley_step(sigma[j], delta[j], t[j], q[j])

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 from functools import cached_property
 
@@ -10,8 +11,8 @@ from numba import njit
 
 from porkgrid.physics.arcs import distance_range, transfer_angle
 from porkgrid.physics.constants import DAY_S, GM_SUN_KM3_S2
-from porkgrid.physics.lambert import BAD_INPUT, ECLIPTIC_POLE_ICRF, SCRATCH_ROWS, lambert_row
-from porkgrid.physics.timeflight import PLAIN
+from porkgrid.physics.lambert import BLOCK, ECLIPTIC_POLE_ICRF, SCRATCH_ROWS, lambert_row
+from porkgrid.physics.timeflight import PLAIN, ROW
 from porkgrid.sky.states import StateTable
 
 _POLE = np.array(ECLIPTIC_POLE_ICRF)
@@ -97,31 +98,18 @@ def solve_leg(departure: StateTable, arrival: StateTable, option: LegOption) -> 
 @njit(**PLAIN)
 def _leg_grid(jd1, x1, u1, jd2, x2, u2, gm, pole, way, revs, right, v_out, v_in, status):
     """Excess speeds at both ends for all dates: v_out, v_in (3, n, m); x, u are (3, dates) states."""
-    m = jd2.shape[0]
-    scratch = np.empty((SCRATCH_ROWS, m))
-    tof = np.empty(m)
-    r1, v1, v2 = np.empty((3, m)), np.empty((3, m)), np.empty((3, m))
-    for i in range(jd1.shape[0]):
-        for j in range(m):
-            tof[j] = (jd2[j] - jd1[i]) * DAY_S
-        for k in range(3):
-            r1[k, :] = x1[k, i]
-        lambert_row(r1, x2, tof, gm, pole, way, revs, right, scratch, v1, v2, status[i])
-        for k in range(3):
-            _minus_constant(v1[k], u1[k, i], v_out[k, i])
-            _minus(v2[k], u2[k], v_in[k, i])
-
-
-@njit(**PLAIN)
-def _minus_constant(a, b, out):
-    for j in range(a.shape[0]):
-        out[j] = a[j] - b
-
-
-@njit(**PLAIN)
-def _minus(a, b, out):
-    for j in range(a.shape[0]):
-        out[j] = a[j] - b[j]
+    for left in range(0, jd2.shape[0], BLOCK):
+        end = min(left + BLOCK, jd2.shape[0])
+        b, w2 = x2[:, left:end].copy(), u2[:, left:end].copy()
+        scratch = np.empty((SCRATCH_ROWS, end - left))
+        a, v1, v2 = np.empty_like(b), np.empty_like(b), np.empty_like(b)
+        tof = np.empty(end - left)
+        for i in range(jd1.shape[0]):
+            _from_one_date(jd1[i], x1[:, i], jd2[left:end], a, tof)
+            lambert_row(a, b, tof, gm, pole, way, revs, right, scratch, v1, v2, status[i, left:end])
+            for k in range(3):
+                _minus_constant(v1[k], u1[k, i], v_out[k, i, left:end])
+                _minus(v2[k], w2[k], v_in[k, i, left:end])
 
 
 @njit(**PLAIN)
@@ -130,23 +118,44 @@ def energy_and_arrival_speed(jd1, x1, u1, jd2, x2, u2, gm, pole, way, c3, v_arri
 
     The leanest form of a survey, for grids so large that nothing else can be kept.
     """
-    m = jd2.shape[0]
-    scratch = np.empty((SCRATCH_ROWS, m))
-    tof, status = np.empty(m), np.full(m, BAD_INPUT, dtype=np.int8)
-    r1, v1, v2 = np.empty((3, m)), np.empty((3, m)), np.empty((3, m))
-    for i in range(jd1.shape[0]):
-        for j in range(m):
-            tof[j] = (jd2[j] - jd1[i]) * DAY_S
-        for k in range(3):
-            r1[k, :] = x1[k, i]
-        lambert_row(r1, x2, tof, gm, pole, way, 0, False, scratch, v1, v2, status)
-        _energy_row(v1, u1[:, i].copy(), v2, u2, c3[i], v_arrival[i])
+    for left in range(0, jd2.shape[0], BLOCK):
+        end = min(left + BLOCK, jd2.shape[0])
+        b, w2 = x2[:, left:end].copy(), u2[:, left:end].copy()
+        scratch = np.empty((SCRATCH_ROWS, end - left))
+        a, v1, v2 = np.empty_like(b), np.empty_like(b), np.empty_like(b)
+        tof, status = np.empty(end - left), np.empty(end - left, dtype=np.int8)
+        for i in range(jd1.shape[0]):
+            _from_one_date(jd1[i], x1[:, i], jd2[left:end], a, tof)
+            lambert_row(a, b, tof, gm, pole, way, 0, False, scratch, v1, v2, status)
+            _energy_row(v1, u1[:, i], v2, w2, c3[i, left:end], v_arrival[i, left:end])
 
 
 @njit(**PLAIN)
+def _from_one_date(jd1, x1, jd2, a, tof):
+    """Times of flight in s from one date, and its position repeated."""
+    for j in range(jd2.shape[0]):
+        tof[j] = (jd2[j] - jd1) * DAY_S
+    for k in range(3):
+        a[k, :] = x1[k]
+
+
+@njit(**ROW)
+def _minus_constant(a, b, out):
+    for j in range(a.shape[0]):
+        out[j] = a[j] - b
+
+
+@njit(**ROW)
+def _minus(a, b, out):
+    for j in range(a.shape[0]):
+        out[j] = a[j] - b[j]
+
+
+@njit(**ROW)
 def _energy_row(v1, w1, v2, w2, c3, v_arrival):
+    px, py, pz = w1[0], w1[1], w1[2]
     for j in range(c3.shape[0]):
-        x, y, z = v1[0, j] - w1[0], v1[1, j] - w1[1], v1[2, j] - w1[2]
+        x, y, z = v1[0, j] - px, v1[1, j] - py, v1[2, j] - pz
         c3[j] = x * x + y * y + z * z
         x, y, z = v2[0, j] - w2[0, j], v2[1, j] - w2[1, j], v2[2, j] - w2[2, j]
-        v_arrival[j] = np.sqrt(x * x + y * y + z * z)
+        v_arrival[j] = math.sqrt(x * x + y * y + z * z)

@@ -2,9 +2,9 @@
 
     python tests/benchmarks/bench_lambert_api.py [problems] [rounds]
 
-Radius ratio 0.2 to 5, transfer angles all round the circle, ellipses and hyperbolas; then 1 and 2 revolutions,
-each branch, on a tenth as many.  One thread each; ours pays for checking and allocating, the baseline fills
-arrays it is given.
+Radius ratio 0.2 to 5, transfer angles all round the circle, ellipses and hyperbolas; then 1 and 2 turns, each
+branch, on a tenth as many.  One thread each; ours pays for checking and allocating, the baseline fills arrays
+it is given.
 """
 
 from __future__ import annotations
@@ -34,7 +34,7 @@ class Batch:
 
 
 def draw(rng: np.random.Generator, n: int, revs: int, branch: str) -> Batch:
-    """Draw flights of 0.1 to 10 parabolic times, or with revolutions in up to twice what surely holds them."""
+    """Draw flights of 0.1 to 10 parabolic times, or with revolutions up to twice what surely holds them."""
     theta, incline = rng.uniform(0, 2 * np.pi, n), rng.uniform(0, 0.2, n)
     start, ratio = rng.uniform(0, 2 * np.pi, n), 10 ** rng.uniform(-0.7, 0.7, n)
 
@@ -73,11 +73,13 @@ def compare(batch: Batch, rounds: int) -> None:
     apart = np.linalg.norm(answers["v1"] - v1, axis=1) / np.linalg.norm(v1, axis=1)
     kind = "no revolutions" if batch.revs == 0 else f"N = {batch.revs}, {batch.branch}"
     hyperbolic = np.mean((v1**2).sum(1) > 2 * GM_SUN_KM3_S2 / np.linalg.norm(batch.r1, axis=1))
+    missed = (np.isnan(answers["v1"][:, 0]).sum(), np.isnan(v1[:, 0]).sum())
+    print(f"  {kind}: {n} problems, {hyperbolic:.0%} hyperbolic, not solved {missed[0]}, {missed[1]}")
     print(
-        f"  {kind:15s} {n:8d} problems, {hyperbolic:4.0%} hyperbolic: lambert() {seconds['ours'] / n * 1e9:7.1f} ns, "
-        f"Householder {seconds['theirs'] / n * 1e9:7.1f} ns, ratio {seconds['theirs'] / seconds['ours']:5.2f}×; "
-        f"not solved {np.isnan(answers['v1'][:, 0]).sum()}/{np.isnan(v1[:, 0]).sum()}; "
-        f"apart: median {np.nanmedian(apart):.0e}, most {np.nanmax(apart):.0e}"
+        f"      lambert() {seconds['ours'] / n * 1e9:.1f} ns, "
+        f"Householder {seconds['theirs'] / n * 1e9:.1f} ns, "
+        f"ratio {seconds['theirs'] / seconds['ours']:.2f}×; "
+        f"answers apart: median {np.nanmedian(apart):.0e}, most {np.nanmax(apart):.0e}"
     )
 
 

@@ -13,7 +13,7 @@ import math
 import numpy as np
 from numba import njit
 
-ZERO_REV_STEP = 1e-5  # the paper's stopping rules: a Householder step this small leaves an error of its 4th power
+ZERO_REV_STEP = 1e-5  # the paper's stopping rules: a step this small leaves about its 4th power
 MULTI_REV_STEP = 1e-8
 MAX_ITERATIONS = 15
 BATTIN_WITHIN = 0.01  # |x - 1| where Lancaster's expression cancels and Battin's series is short

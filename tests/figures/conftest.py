@@ -15,10 +15,10 @@ Placed = list[tuple[Text, Bbox]]
 
 @pytest.fixture
 def placed_texts() -> Callable[[Figure], Placed]:
-    """Every visible text of a figure with its box in pixels, drawn as the PNG is."""
+    """Every visible text of a figure with its box in pixels, laid out as in the PNG."""
 
     def collect(figure: Figure) -> Placed:
-        figure.canvas.draw()
+        figure.draw_without_rendering()
         renderer = figure.canvas.get_renderer()  # type: ignore[attr-defined]
         found: list[Text] = [t for t in figure.findobj(Text) if t.get_visible() and t.get_text().strip()]  # type: ignore[misc]
         hidden = {

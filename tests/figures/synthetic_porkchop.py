@@ -6,6 +6,7 @@ from collections.abc import Callable
 
 import numpy as np
 import pandas as pd
+import pytest
 import xarray as xr
 
 from porkgrid.survey.view import DayBests, FlagShare
@@ -80,7 +81,7 @@ def porkchop(
             "rank_order": "least",
             "kernel": "DE440",
             "porkgrid": "0.1.0",
-            "caution": "Patched conics for early design: confirm a date with a full-force trajectory before use.",
+            "caution": "Patched conics for early design: confirm a date with a full-force run before use.",
             **attrs,
         },
     )
@@ -113,20 +114,17 @@ def bests_of(view: xr.Dataset, of: str, order: str = "least") -> DayBests:
 
 
 def candidates_of(view: xr.Dataset, of: str, keep: int, apart_days: float = 10.0) -> pd.DataFrame:
-    """The best allowed cells, greedily kept apart, as a survey's candidates table."""
+    """The best allowed cells, kept apart, as a survey's candidates table."""
     values = np.where(view["blocked_by"].values == 0, view[of].values, np.nan)
     departure, arrival = view["departure"].values, view["arrival"].values
-    rows: list[dict] = []
-    kept: list[tuple[np.datetime64, np.datetime64]] = []
     apart = np.timedelta64(round(apart_days * 86_400_000), "ms")
-    for flat in np.argsort(values, axis=None):
-        i, j = np.unravel_index(flat, values.shape)
-        if len(rows) == keep or np.isnan(values[i, j]):
-            break
-        if all(abs(departure[i] - a) >= apart or abs(arrival[j] - b) >= apart for a, b in kept):
-            kept.append((departure[i], arrival[j]))
-            when = {"departure": _iso(departure[i]), "arrival": _iso(arrival[j])}
-            rows.append({"rank": len(rows) + 1, **when, of: float(values[i, j])})
+    rows: list[dict] = []
+    while len(rows) < keep and np.isfinite(values).any():
+        i, j = np.unravel_index(np.nanargmin(values), values.shape)
+        when = {"departure": _iso(departure[i]), "arrival": _iso(arrival[j])}
+        rows.append({"rank": len(rows) + 1, **when, of: float(values[i, j])})
+        near = np.ix_(abs(departure - departure[i]) < apart, abs(arrival - arrival[j]) < apart)
+        values[near] = np.nan
     return pd.DataFrame(rows, columns=["rank", "departure", "arrival", of])
 
 
@@ -226,3 +224,6 @@ CASES: dict[str, tuple[Callable[[], xr.Dataset], int, float, str | None]] = {
     "long words": (lambda: many_limits(9).assign_attrs(**LONG_WORDS), 20, 2, "v_inf_arrival_km_s"),
     "coarse": (lambda: usual(12, 20), 6, 10, "v_inf_arrival_km_s"),
 }
+
+_MORE = ("five limits", "one arrival date", "two by two", "constant", "coarse", "arrival before departure")
+EVERY_CASE = [pytest.param(name, marks=[pytest.mark.slow] * (name in _MORE)) for name in CASES]

@@ -3,17 +3,19 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from functools import cache
 
 import numpy as np
 import pandas as pd
 import pytest
 import synthetic_porkchop as grids
 from matplotlib.figure import Figure
-from synthetic_porkchop import C3, CASES
+from synthetic_porkchop import C3, CASES, EVERY_CASE
 
 from porkgrid.figures.chart import draw_chart
 
 
+@cache
 def chart_of(case: str) -> Figure:
     make, keep, apart, lines = CASES[case]
     view = make()
@@ -25,7 +27,7 @@ def words(placed: list) -> str:
     return "\n".join(text.get_text() for text, _ in placed)
 
 
-@pytest.mark.parametrize("case", CASES)
+@pytest.mark.parametrize("case", EVERY_CASE)
 def test_no_text_stands_on_another_or_leaves_the_slide_or_is_too_small(
     case: str, placed_texts: Callable, overlapping: Callable
 ) -> None:

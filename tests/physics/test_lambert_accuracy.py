@@ -1,6 +1,7 @@
 """Accuracy of the Lambert solver over its whole domain, judged from outside.
 
-Two judges: flight_time_judge looks at millions of answers in longdouble, mpmath_lambert at thousands with 50 digits.
+Two judges: flight_time_judge looks at millions of answers in longdouble, mpmath_lambert at thousands with
+50 digits. test_lambert_judge.py judges them.
 """
 
 from collections import Counter
@@ -22,7 +23,7 @@ CHUNK = 200_000
 
 
 def check_chunk(problems: Problems) -> tuple[Counter, float]:
-    """Assert all that must hold of a chunk's answers; return counts of what was seen, and the worst residual."""
+    """Assert all that must hold of a chunk's answers; return counts by kind, and the worst residual."""
     v1, v2 = solve_all(lambert, problems)
     finite = np.isfinite(v1).all(1) & np.isfinite(v2).all(1)
     empty = np.isnan(v1).all(1) & np.isnan(v2).all(1)
@@ -46,10 +47,12 @@ def check_chunk(problems: Problems) -> tuple[Counter, float]:
 
 
 def check_one_conic(part, shape, x, v1, v2):
-    """Both velocities must be those of one conic through both points; near 0 and 180° its plane is uncertain."""
+    """Both velocities must be of one conic through both points; near 0 and 180° its plane is uncertain."""
     tolerance = VELOCITY + 8 * judge.HALF_ULP / shape.sine
     for found, wanted in zip((v1, v2), judge.velocities(shape, x, part.gm, part.r1, part.r2), strict=True):
-        off = np.linalg.norm((found - wanted).astype(float), axis=1) / np.linalg.norm(wanted.astype(float), axis=1)
+        off = np.linalg.norm((found - wanted).astype(float), axis=1) / np.linalg.norm(
+            wanted.astype(float), axis=1
+        )
         nobody(~(off <= tolerance), part, "velocities of different conics", off)
 
 

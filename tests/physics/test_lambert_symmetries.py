@@ -1,4 +1,4 @@
-"""Properties every Lambert solver must have, whatever the problem: symmetries, units, landing on the target."""
+"""What every Lambert solver must have, whatever the problem: symmetries, units, landing on the target."""
 
 import numpy as np
 import pytest
@@ -20,7 +20,9 @@ def flights(draw):
     """A moderate problem (r1, r2, tof): ratio 0.1..10, θ at least 5° from the corners, both ways round."""
     degrees = draw(st.one_of(st.floats(5, 175), st.floats(185, 355)))
     theta, ratio = np.deg2rad(degrees), 10 ** draw(st.floats(-1, 1))
-    turn = Rotation.from_euler("zxz", [draw(st.floats(0, 6.28)), draw(st.floats(0, 1.0)), draw(st.floats(0, 6.28))])
+    turn = Rotation.from_euler(
+        "zxz", [draw(st.floats(0, 6.28)), draw(st.floats(0, 1.0)), draw(st.floats(0, 6.28))]
+    )
     r1 = turn.apply([AU_KM, 0.0, 0.0])
     r2 = turn.apply(AU_KM * ratio * np.array([np.cos(theta), np.sin(theta), 0.0]))
     chord = np.linalg.norm(r2 - r1)
@@ -30,11 +32,13 @@ def flights(draw):
 
 def solve(r1, r2, tof, revs=0, **kind):
     """Solve about the Sun; with revolutions, in a time that surely holds them."""
-    return lambert(r1, r2, tof if revs == 0 else (tof + flight_for(r1, r2, revs)), GM_SUN_KM3_S2, revs=revs, **kind)
+    return lambert(
+        r1, r2, tof if revs == 0 else (tof + flight_for(r1, r2, revs)), GM_SUN_KM3_S2, revs=revs, **kind
+    )
 
 
 def flight_for(r1, r2, revs):
-    """A time longer than the least for N: that of N + 1 turns on the ellipse of least energy, 2π sqrt(a³/gm)."""
+    """A time longer than the least for N: that of N + 1 turns on the ellipse of least energy."""
     a = (np.linalg.norm(r1) + np.linalg.norm(r2) + np.linalg.norm(r2 - r1)) / 4
     return 2 * np.pi * (revs + 1) * a**1.5 / YEAR_RATE
 

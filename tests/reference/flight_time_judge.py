@@ -15,7 +15,7 @@ import numpy as np
 LONG = np.longdouble
 PI = LONG(4) * np.arctan(LONG(1))
 HALF_ULP = 2.0**-53
-LEAST_TIME_STEPS = 16  # Newton needs 6; the rest are for the few that must bisect first (λ near 1)
+LEAST_TIME_STEPS = 120  # 6 for most; the few with λ near 1 bisect first
 SERIES_TERMS = 22  # S1 < 0.09 there: (0.09 · 1.1)^22 < 1e-22
 
 
@@ -97,21 +97,33 @@ def _series(signed_sine2: np.ndarray, cosine: np.ndarray) -> np.ndarray:
 def least_time(g: Shape, revs: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
     """Least T for N >= 1 revolutions, longdouble, and the x where it is.
 
-    Newton on dT/dx = 0 in doubles (T is flat there), kept inside the interval in which dT/dx changes sign.
+    Newton on dT/dx = 0 in doubles (T is flat there), kept inside the interval where dT/dx changes sign, and
+    bisection every third step: that interval must shrink from both ends.  Settled problems leave the loop.
     """
     rough = Shape(*(np.asarray(getattr(g, name), float) for name in g.__dataclass_fields__))
-    lam3, outside = rough.lam**3, 1 - rough.lam**2
-    low, high = np.full(g.s.shape, -1.0), np.full(g.s.shape, 1.0)
-    x = np.zeros(g.s.shape)
-    for _ in range(LEAST_TIME_STEPS):
-        t = time_of_flight(x, rough, revs)
-        y, w = np.sqrt(rough.c_over_s + (rough.lam * x) ** 2), (1 - x) * (1 + x)
-        slope = (3 * t * x - 2 + 2 * lam3 * x / y) / w
-        curvature = (3 * t + 5 * x * slope + 2 * outside * lam3 / y**3) / w
-        low, high = np.where(slope < 0, x, low), np.where(slope < 0, high, x)
-        x = x - slope / curvature
-        x = np.where((x > low - 1e-9) & (x < high + 1e-9), x, (low + high) / 2)  # rounding may step over a root
+    x, low, high = np.zeros(g.s.shape), np.full(g.s.shape, -1.0), np.full(g.s.shape, 1.0)
+    busy = np.arange(x.size)
+    for count in range(1, LEAST_TIME_STEPS):
+        here, part = x[busy], rough[busy]
+        slope, curvature = _slope_and_curvature(here, part, revs[busy])
+        low[busy], high[busy] = np.where(slope < 0, here, low[busy]), np.where(slope < 0, high[busy], here)
+        new = here - slope / curvature
+        inside = (new > low[busy] - 1e-9) & (new < high[busy] + 1e-9)  # rounding may step over the root
+        settled = inside & (np.abs(new - here) < 1e-9 * np.sqrt(part.c_over_s))
+        bisect = ~settled & (~inside | (count % 3 == 0))
+        x[busy] = np.where(bisect, (low[busy] + high[busy]) / 2, new)
+        busy = busy[~settled]
+    if busy.size:
+        raise ArithmeticError(f"{busy.size} least flight times were not found")
     return time_of_flight(np.asarray(x, LONG), g, revs), x
+
+
+def _slope_and_curvature(x: np.ndarray, g: Shape, revs: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+    """dT/dx and d²T/dx²."""
+    t = time_of_flight(x, g, revs)
+    y, w = np.sqrt(g.c_over_s + (g.lam * x) ** 2), (1 - x) * (1 + x)
+    slope = (3 * t * x - 2 + 2 * g.lam**3 * x / y) / w
+    return slope, (3 * t + 5 * x * slope + 2 * g.c_over_s * g.lam**3 / y**3) / w
 
 
 def recover_x(g: Shape, gm: float, r1, r2, v1, v2) -> tuple[np.ndarray, np.ndarray]:
@@ -132,7 +144,9 @@ def recover_x(g: Shape, gm: float, r1, r2, v1, v2) -> tuple[np.ndarray, np.ndarr
         by_radial = np.abs(g.rho) > g.sigma
         x = np.where(by_radial, (e - d) / 2, (g.lam * h - d) / (1 + g.lam**2))
         error = np.where(
-            by_radial, d_error * (1 + 1 / np.abs(g.rho)) / 2, (np.abs(g.lam) * h_error + d_error) / (1 + g.lam**2)
+            by_radial,
+            d_error * (1 + 1 / np.abs(g.rho)) / 2,
+            (np.abs(g.lam) * h_error + d_error) / (1 + g.lam**2),
         )
     return x, error
 

@@ -40,8 +40,8 @@ class Problems:
         """Write problem i so that it can be pasted into a session, digit for digit."""
         branch = "left" if self.left[i] else "right"
         return (
-            f"r1={self.r1[i].tolist()}, r2={self.r2[i].tolist()}, tof={self.tof[i].item()!r}, gm={self.gm!r}, "
-            f"revs={self.revs[i]}, branch={branch!r}  (theta={self.theta[i].item()!r})"
+            f"r1={self.r1[i].tolist()}, r2={self.r2[i].tolist()}, tof={self.tof[i].item()!r}, "
+            f"gm={self.gm!r}, revs={self.revs[i]}, branch={branch!r}  (theta={self.theta[i].item()!r})"
         )
 
 
@@ -49,16 +49,16 @@ def random_problems(rng: np.random.Generator, n: int, corner_share: float = 1 / 
     """Draw n problems: radius ratio 1e-3..1e3, flight 1e-3..1e3 parabolic times, N = 0 (half of them) to 5.
 
     A quarter of the radii are equal to 1e-8..0.1, as on resonant legs from a planet to itself.
-    ``corner_share`` of the angles lie 1e-6 to 0.1 rad from 0, 180° or 360°; half of the flights with N >= 1 lie within
-    1e-8 to 100 of the least time there is, some of them under it.  |pole · normal| >= 0.01, so that the sense
-    of motion is not a matter of rounding.
+    ``corner_share`` of the angles lie 1e-6 to 0.1 rad from 0, 180° or 360°; half of the flights with N >= 1
+    lie within 1e-8 to 100 of the least time there is, some of them under it.  |pole · normal| >= 0.01, so
+    that the sense of motion is not a matter of rounding.
     """
     theta = _angles(rng, n, corner_share)
     r1, r2 = _vectors(rng, theta)
     revs = np.where(rng.random(n) < 0.5, 0, rng.integers(1, MAX_REVS + 1, n))
     shape = judge.shape(r1, r2, POLE)
     scale = np.asarray(judge.time_scale(shape, GM_SUN_KM3_S2), float)
-    parabolic = np.asarray(judge.time_of_flight(np.ones(n, judge.LONG), shape, 0), float)
+    parabolic = np.asarray(judge.time_of_flight(np.ones(n, judge.LONG), shape, np.zeros(n)), float)
     tof = scale * parabolic * 10 ** rng.uniform(-3, 3, n)
     least_tof = np.zeros(n)
     turns = revs > 0

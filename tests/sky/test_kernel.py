@@ -47,65 +47,33 @@ def straight_line(
     frame="J2000",
 ):
     """Return a type 2 segment in steps of 50 days on a straight line that is at `start` on the date FIRST."""
-    half = 25.0 * DAY
-    count = round((last - first) / 50.0)
-    middles = seconds(first) - seconds(FIRST) + half * (2 * np.arange(count) + 1)
+    half, count = 25.0 * DAY, round((last - first) / 50.0)
+    middles = (first - FIRST) * DAY + half * (2 * np.arange(count) + 1)
     start, speed = np.array(start), np.array(speed)
-    records = np.stack([start + speed * middles[:, None], np.broadcast_to(half * speed, (count, 3))], axis=-1)
-
-    def write(handle):
-        spiceypy.spkw02(
-            handle,
-            body,
-            center,
-            frame,
-            seconds(first),
-            seconds(last),
-            "line",
-            2 * half,
-            count,
-            1,
-            records.ravel(),
-            seconds(first),
-        )
-
-    return write
+    lines = np.stack([start + speed * middles[:, None], np.broadcast_to(half * speed, (count, 3))], axis=-1)
+    head = (body, center, frame, seconds(first), seconds(last), "line")
+    return lambda handle: spiceypy.spkw02(handle, *head, 2 * half, count, 1, lines.ravel(), seconds(first))
 
 
-def position_and_speed_records(handle):
+TERN_HEAD = (TERN_ID, 10, "J2000", seconds(FIRST), seconds(LAST), "tern")
+
+
+def position_and_speed(handle):
     """Write a type 3 segment: position and velocity as polynomials of their own."""
-    half = 50.0 * DAY
-    record = np.array(
-        [[1e8, half * 10.0], [2e8, half * -5.0], [3e7, half * 1.0], [10.0, 0.0], [-5.0, 0.0], [1.0, 0.0]]
-    )
-    spiceypy.spkw03(
-        handle,
-        TERN_ID,
-        10,
-        "J2000",
-        seconds(FIRST),
-        seconds(LAST),
-        "both",
-        2 * half,
-        1,
-        1,
-        record.ravel(),
-        seconds(FIRST),
-    )
+    half = (LAST - FIRST) / 2 * DAY
+    position = [1e8 + half * 10.0, half * 10.0, 2e8 - half * 5.0, half * -5.0, 3e7 + half, half]
+    velocity = [10.0, 0.0, -5.0, 0.0, 1.0, 0.0]
+    record = np.array(position + velocity)
+    spiceypy.spkw03(handle, *TERN_HEAD, 2 * half, 1, 1, record, seconds(FIRST))
 
 
 def table_of_states(degree):
     """Return a type 9 segment: a table of states, to interpolate with a polynomial of a degree."""
     epochs = seconds(np.linspace(FIRST, LAST, 11))
-    line = np.array([1e8, 2e8, 3e7]) + (epochs - epochs[0])[:, None] * np.array([10.0, -5.0, 1.0])
-    states = np.hstack([line, np.broadcast_to([10.0, -5.0, 1.0], line.shape)])
-
-    def write(handle):
-        spiceypy.spkw09(
-            handle, TERN_ID, 10, "J2000", epochs[0], epochs[-1], "table", degree, len(epochs), states, epochs
-        )
-
-    return write
+    speed = np.array([10.0, -5.0, 1.0])
+    line = np.array([1e8, 2e8, 3e7]) + (epochs - epochs[0])[:, None] * speed
+    states = np.hstack([line, np.broadcast_to(speed, line.shape)])
+    return lambda handle: spiceypy.spkw09(handle, *TERN_HEAD, degree, len(epochs), states, epochs)
 
 
 def spice_states(files, body_id, dates):
@@ -140,7 +108,7 @@ def test_a_centre_in_one_further_file_serves_a_body_in_another(tmp_path):
 
 
 @pytest.mark.parametrize(
-    "segment", [straight_line(), position_and_speed_records, table_of_states(1)], ids=["2", "3", "9"]
+    "segment", [straight_line(), position_and_speed, table_of_states(1)], ids=["2", "3", "9"]
 )
 def test_the_types_that_can_be_read_agree_with_spice(tmp_path, segment):
     path = write_spk(tmp_path / "tern.bsp", segment)
