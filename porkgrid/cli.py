@@ -300,11 +300,13 @@ def main() -> None:
         for line in str(error).splitlines():
             print(f"porkgrid: {line}", file=sys.stderr)
         code = 2 if isinstance(error, RequestError) else 1
-    except KeyboardInterrupt:
+    except (KeyboardInterrupt, typer.Abort):  # typer turns the one into the other
         print("porkgrid: interrupted; give the same command again to go on", file=sys.stderr)
         code = 130
-    except typer.Abort:
-        code = 130
+    except OSError as error:
+        place = "" if error.filename is None else f"{error.filename}: "
+        print(f"porkgrid: {place}{error.strerror or error}", file=sys.stderr)
+        code = 1
     except Exception as error:
         code = _usage_error(error)
     sys.exit(code)

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import json
 import math
+import os
 import sys
 from collections.abc import Callable, Iterable, Iterator, Sequence
 from contextlib import contextmanager
@@ -71,8 +72,8 @@ def candidate_rows(table: pd.DataFrame, units: dict[str, str], names: Sequence[s
 
 @contextmanager
 def sweep_progress(quiet: bool) -> Iterator[Callable[[Progress], None] | None]:
-    """A bar with share, rate, time left and the best value so far; nothing where there is no terminal."""
-    if quiet or not sys.stderr.isatty():
+    """A bar with share, rate, time left and best value; nothing without a terminal or under NO_COLOR."""
+    if quiet or not sys.stderr.isatty() or os.environ.get("NO_COLOR"):
         yield None
         return
     from rich.progress import BarColumn, Progress, TaskProgressColumn, TextColumn, TimeRemainingColumn

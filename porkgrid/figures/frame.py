@@ -35,10 +35,11 @@ def draw_header(sheet: Axes, view: xr.Dataset, headline: Sequence[str], limits: 
 
 
 def draw_footer(sheet: Axes, view: xr.Dataset) -> None:
-    """Write the ephemeris, the version and the caution, on two lines at most."""
+    """Write the ephemeris, the version, how the grid was thinned and the caution, on two lines at most."""
     made_with = [
         f"Ephemeris: {one_line(view.attrs['kernel'])}" if view.attrs.get("kernel") else "",
         f"porkgrid {one_line(view.attrs['porkgrid'])}" if view.attrs.get("porkgrid") else "",
+        one_line(view.attrs.get("thinned", "")),
         one_line(view.attrs.get("caution", "")),
     ]
     text = " · ".join(part for part in made_with if part)

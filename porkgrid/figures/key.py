@@ -23,8 +23,7 @@ _SWATCH_W, _SWATCH_H = 0.34, 0.15
 _TEXT_GAP = 0.10
 _ROW = line_height_in(SMALL_PT)
 _LEFT_PART = 0.68  # of the table's width, for numbers and dates; the rest is for values
-_GAP_DIGITS = 2
-_FIGURE_SPACE = "\u2007"  # as wide as a digit
+_DIGIT_BLANK = "\u2007"  # as wide as a digit
 SWATCH_PX = (round(_SWATCH_H * PIXELS_PER_INCH), round(_SWATCH_W * PIXELS_PER_INCH))
 
 
@@ -119,50 +118,56 @@ def draw_candidate_table(
     room = int((column.y - 0.07 - column.bottom) / _ROW) - 1  # below the line of heads
     shown = len(candidates) if len(candidates) <= room else max(room - 1, 0)
     rows = _dates_and_flights(candidates[:shown])
-    value_room = (1.0 - _LEFT_PART) * column.width - 0.1
+    right = column.left + max(_LEFT_PART * column.width, max((_width(cells) for cells in rows), default=0.0))
+    value_room = column.right - right - 0.15
     head = shorten(measured.title, value_room, SMALL_PT) if measured.name in candidates else ""
 
-    widths = (2, *(_GAP_DIGITS + len(cell) for cell in rows[0][1:3]), _GAP_DIGITS + 4) if rows else ()
-    _table_heads(column, widths, head)
+    column.y -= _ROW
+    _table_heads(column, rows[:1], right, head)
     rule = column.y - 0.05
     add_line(column.sheet, [column.left, column.right], [rule, rule], color=FAINT_INK, linewidth=0.4)
     column.y = rule - 0.02
     for i, cells in enumerate(rows):
-        value = value_text(float(candidates[measured.name].iloc[i]), value_step) if head else ""
-        _table_row(column, widths, cells, value)
+        column.y -= _ROW
+        # One text for all of a row's digits: setting each cell apart would take as long as drawing the grid.
+        put(column.sheet, right, column.y, "".join(cells), SMALL_PT, ha="right")
+        if head:
+            value = value_text(float(candidates[measured.name].iloc[i]), value_step)
+            put(column.sheet, column.right - 0.05, column.y, value, SMALL_PT, ha="right")
     if shown < len(candidates):
         column.y -= _ROW
         rest = f"… and {len(candidates) - shown} more in the candidates table"
         put(column.sheet, column.left, column.y, rest, SMALL_PT, color=SOFT_INK)
 
 
-def _dates_and_flights(candidates: pd.DataFrame) -> list[tuple[str, str, str, str]]:
-    """Return number, departure, arrival and days of flight; dates to the day or, if need be, hour."""
+def _dates_and_flights(candidates: pd.DataFrame) -> list[list[str]]:
+    """Return number, departure, arrival and days of flight, padded to columns; dates to the day or hour."""
     departures, arrivals = dates_from_iso(candidates["departure"]), dates_from_iso(candidates["arrival"])
     flights = (arrivals - departures) / np.timedelta64(1, "D")
     dates = np.concatenate([departures, arrivals])
-    unit = "datetime64[D]" if (dates == dates.astype("datetime64[D]")).all() else "datetime64[h]"
+    to_the_day = (dates == dates.astype("datetime64[D]")).all()
+    unit, gap = ("datetime64[D]", 2) if to_the_day else ("datetime64[h]", 1)
+    days = [f"{flight:.0f}" for flight in flights]
+    widest = max((len(text) for text in days), default=0)
     return [
-        (str(i + 1), str(departure.astype(unit)), str(arrival.astype(unit)), f"{days:.0f}")
-        for i, (departure, arrival, days) in enumerate(zip(departures, arrivals, flights, strict=True))
+        [
+            str(i + 1).rjust(2, _DIGIT_BLANK),
+            gap * _DIGIT_BLANK + str(departures[i].astype(unit)),
+            gap * _DIGIT_BLANK + str(arrivals[i].astype(unit)),
+            gap * _DIGIT_BLANK + days[i].rjust(max(widest, 4), _DIGIT_BLANK),
+        ]
+        for i in range(len(candidates))
     ]
 
 
-def _table_heads(column: Column, widths: Sequence[int], value_head: str) -> None:
-    """Write the heads over the right edges of the cells, whose widths are given in digits."""
-    column.y -= _ROW
-    digit = width_in("0", SMALL_PT)
-    right = column.left + _LEFT_PART * column.width
-    rights = right - digit * (sum(widths) - np.cumsum(widths))
-    for x, head in zip(rights, ("", "departure", "arrival", "days"), strict=False):
-        put(column.sheet, float(x), column.y, head, SMALL_PT, color=SOFT_INK, ha="right")
+def _table_heads(column: Column, rows: Sequence[list[str]], right: float, value_head: str) -> None:
+    """Write the heads over the right edges of the cells of the first row."""
+    for cells in rows:
+        for i, head in enumerate(("departure", "arrival", "days"), start=2):
+            x = right - _width(cells[i:])
+            put(column.sheet, x, column.y, head, SMALL_PT, color=SOFT_INK, ha="right")
     put(column.sheet, column.right - 0.05, column.y, value_head, SMALL_PT, color=SOFT_INK, ha="right")
 
 
-def _table_row(column: Column, widths: Sequence[int], cells: Sequence[str], value: str) -> None:
-    """Write one row as two texts; cells of digits are padded with blanks as wide as a digit."""
-    column.y -= _ROW
-    right = column.left + _LEFT_PART * column.width
-    padded = "".join(cell.rjust(width, _FIGURE_SPACE) for cell, width in zip(cells, widths, strict=True))
-    put(column.sheet, right, column.y, padded, SMALL_PT, ha="right")
-    put(column.sheet, column.right - 0.05, column.y, value, SMALL_PT, ha="right")
+def _width(cells: Sequence[str]) -> float:
+    return width_in("".join(cells), SMALL_PT)

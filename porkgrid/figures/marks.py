@@ -15,6 +15,7 @@ from matplotlib.collections import LineCollection
 from matplotlib.image import AxesImage
 from matplotlib.lines import Line2D
 from matplotlib.patches import Polygon, Rectangle
+from matplotlib.transforms import IdentityTransform
 
 
 def add_line(
@@ -39,8 +40,25 @@ def add_rectangle(axes: Axes, left: float, bottom: float, width: float, height: 
     axes.add_artist(Rectangle((left, bottom), width, height, **style))
 
 
+class _PixelImage(AxesImage):
+    """An image whose pixels are those of the PNG: copied there, as resampling would take most of its time."""
+
+    def make_image(self, renderer: Any, magnification: float = 1.0, unsampled: bool = False) -> tuple:
+        """Return RGBA pixels bottom row first, with their left and lower edge, as AxesImage does."""
+        left, right, bottom, top = self.get_extent()
+        corners = self.axes.transData.transform([(left, bottom), (right, top)])
+        pixels = np.asarray(self.get_array())
+        rows, columns = pixels.shape[:2]
+        width, height = corners[1] - corners[0]
+        if unsampled or abs(width - columns) > 1.0 or abs(height - rows) > 1.0:
+            return super().make_image(renderer, magnification, unsampled)
+        x, y = np.rint(corners[0])
+        return pixels[::-1], float(x), float(y), IdentityTransform()
+
+
 def add_pixels(axes: Axes, pixels: np.ndarray, extent: tuple[float, float, float, float]) -> None:
     """Show (rows, columns, 3) uint8 pixels over left, right, bottom, top; one to one in the PNG."""
-    image = AxesImage(axes, extent=extent, origin="upper", interpolation="none")
-    image.set_data(pixels)
+    opaque = np.full((*pixels.shape[:2], 1), 255, dtype=np.uint8)
+    image = _PixelImage(axes, extent=extent, origin="upper", interpolation="none")
+    image.set_data(np.concatenate([pixels, opaque], axis=-1))
     axes.add_artist(image)

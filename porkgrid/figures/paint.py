@@ -7,6 +7,7 @@ then colours every pixel.
 from __future__ import annotations
 
 import numpy as np
+import pandas as pd
 
 from porkgrid.figures.ground import (
     ALLOWED,
@@ -103,7 +104,7 @@ def plain_swatch(colour: np.ndarray, hatch: int, rows: int, columns: int) -> np.
 
 def _shared(raster: Raster, ground: Ground) -> np.ndarray:
     """Return (rows, columns): which limit colour (0 common, 1 + hatch) owns the stripe a pixel is in."""
-    sets, which = np.unique(ground.blocked, return_inverse=True)
+    which, sets = pd.factorize(ground.blocked.ravel())  # by hashing: np.unique would sort a million cells
     colour_of_limit = np.zeros(len(ground.masks), dtype=np.intp)
     colour_of_limit[ground.hatched] = 1 + np.arange(len(ground.hatched))
     cycles = [np.unique(colour_of_limit[(ground.masks & bits) != 0]) for bits in sets]

@@ -30,8 +30,9 @@ FAINT_INK = "#a0a7ae"
 PAPER = "#ffffff"
 ACCENT = "#b5179e"
 
-_SETTINGS: Any = {
+SETTINGS: Any = {
     "font.family": ["DejaVu Sans"],  # comes with matplotlib: same widths on every machine
+    "text.hinting": "none",  # at 200 pixels an inch not needed for sharpness, and a tenth of the drawing time
     "svg.hashsalt": "porkgrid",  # the same ids in the same figure every time
     "svg.fonttype": "path",
     "pdf.fonttype": 42,  # whole letters: text can be selected and edited
@@ -93,7 +94,7 @@ def _write(figure: Figure, path: Path, name: str) -> Path:
     temporary = path.with_name(f".{path.name}.{os.getpid()}.part")
     try:
         path.parent.mkdir(parents=True, exist_ok=True)
-        with matplotlib.rc_context(_SETTINGS):
+        with matplotlib.rc_context(SETTINGS):
             figure.savefig(
                 temporary,
                 format=name,

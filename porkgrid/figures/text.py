@@ -12,31 +12,32 @@ from matplotlib.backends.backend_agg import RendererAgg
 from matplotlib.font_manager import FontProperties
 from matplotlib.text import Text
 
-from porkgrid.figures.style import INK, PIXELS_PER_INCH
+from porkgrid.figures.style import INK
 
 POINTS_PER_INCH = 72.0
+_MEASURED_PT = 200.0
 LINE_SPACING = 1.3  # of the text size, baseline to baseline
 
 
 @lru_cache(maxsize=1)
 def _ruler() -> RendererAgg:
-    """Return a renderer at the resolution of the PNG, used only to measure text."""
-    return RendererAgg(1, 1, PIXELS_PER_INCH)
+    """Return a renderer of one pixel a point, used only to measure text."""
+    return RendererAgg(1, 1, POINTS_PER_INCH)
 
 
-@lru_cache(maxsize=32)
-def _font(size_pt: float, weight: str) -> FontProperties:
-    return FontProperties(family=["DejaVu Sans"], size=size_pt, weight=weight)
+@lru_cache(maxsize=8)
+def _font(weight: str) -> FontProperties:
+    return FontProperties(family=["DejaVu Sans"], size=_MEASURED_PT, weight=weight)
 
 
 @lru_cache(maxsize=4096)
 def width_in(text: str, size_pt: float, weight: str = "normal") -> float:
     """Return the width of one line of plain text, in inches.
 
-    Measured as it is drawn: hinting to whole pixels makes small text up to two percent wider than its design.
+    Measured large and scaled down: figures are saved without hinting, so that letters keep their proportions.
     """
-    width, _, _ = _ruler().get_text_width_height_descent(text, _font(size_pt, weight), ismath=False)
-    return float(width) / PIXELS_PER_INCH
+    width, _, _ = _ruler().get_text_width_height_descent(text, _font(weight), ismath=False)
+    return float(width) / _MEASURED_PT * size_pt / POINTS_PER_INCH
 
 
 def line_height_in(size_pt: float) -> float:

@@ -30,17 +30,17 @@ ROW: dict[str, Any] = {
 }
 PLAIN: dict[str, Any] = {"nogil": True, "cache": True, "error_model": "numpy"}
 
-# F(w) on 0.7 <= w <= 1.4 as a polynomial in w − 1: interpolation at Chebyshev nodes in 40-digit arithmetic,
-# 5.9e-16 relative (tests/physics/test_timeflight.py measures it against mpmath).
-_C0, _C1, _C2, _C3, _C4 = (0.666666666666667, -0.39999999999999114, 0.22857142857112295,
-                           -0.12698412698665737, 0.06926406931297546)  # fmt: skip
-_C5, _C6, _C7, _C8, _C9 = (-0.03729603710707985, 0.019891216896475744, -0.010530650883718112,
-                           0.005542533735712357, -0.0029031563855779047)  # fmt: skip
-_C10, _C11, _C12, _C13, _C14 = (0.0015133560685193185, -0.0007868076488705766, 0.00041840284470617795,
-                                -0.00022487810086257046, 8.369392232890001e-05)  # fmt: skip
+# F(w) on 0.7 <= w <= 2.2 as a polynomial in (w − 1)/(w + 1), which has F's singularity w = −1 at infinity:
+# interpolation at Chebyshev nodes in 40-digit arithmetic, 4.8e-16 relative (tests/physics/test_timeflight.py
+# measures it against mpmath).
+_C0, _C1, _C2 = 0.6666666666666667, -0.8000000000000064, 0.11428571428563128
+_C3, _C4, _C5 = 0.012698412701614556, 0.003463203478440827, 0.0013320008555931563
+_C6, _C7, _C8 = 0.0006216001940879652, 0.00032911252129552346, 0.00019047366548775814
+_C9, _C10, _C11 = 0.00011715167336575934, 7.980015372467549e-05, 5.737951766991778e-05
+_C12, _C13 = -5.108137484801659e-06, 9.524384489721683e-05
 
-# Two half-angle steps bring u to within the polynomial's range up to here.
-U_MAX_ROW = 16.0
+# Two half-angle steps bring u to within the polynomial's range up to here: w = 2.2.
+U_MAX_ROW = 149.0
 
 # Taylor coefficients of F at u = 1, in powers of x = 1 − u: c(k+1) = c(k) (k + 3)/(2k + 5).
 _T1, _T2, _T3, _T4 = 2 / 5, 8 / 35, 8 / 63, 16 / 231
@@ -59,19 +59,19 @@ HALF_PI_23 = math.pi ** (2 / 3) / 2
 
 @njit(**ROW, inline="always")
 def _near_one(w):
-    """F(w) for 0.7 <= w <= 1.4."""
-    x = w - 1.0
+    """F(w) for 0.7 <= w <= 2.2."""
+    x = (w - 1.0) / (w + 1.0)
     # Estrin's order instead of Horner's: a third of the latency, and the row loops wait for latency
     x2 = x * x
     x4 = x2 * x2
     low = (_C0 + _C1 * x) + x2 * (_C2 + _C3 * x) + x4 * ((_C4 + _C5 * x) + x2 * (_C6 + _C7 * x))
-    high = (_C8 + _C9 * x) + x2 * (_C10 + _C11 * x) + x4 * ((_C12 + _C13 * x) + x2 * _C14)
+    high = (_C8 + _C9 * x) + x2 * (_C10 + _C11 * x) + x4 * (_C12 + _C13 * x)
     return low + (x4 * x4) * high
 
 
 @njit(**ROW, inline="always")
 def _half_angle_quotient(q):
-    """F(u) at u = q − 1 <= 16 as (n, d): F = n/(d q).
+    """F(u) at u = q − 1 <= U_MAX_ROW as (n, d): F = n/(d q).
 
     F(u) = (2 + F(v)/v)/(4v²) with v = sqrt((1 + u)/2), taken twice.
     """
@@ -145,7 +145,7 @@ def start_row(sigma, delta, t, q):
 
 @njit(**ROW, inline="always")
 def halley_step(s, d, t, q):
-    """One Halley step from q <= 17: (new q, relative error of the time before the step).
+    """One Halley step from q <= 1 + U_MAX_ROW: (new q, relative error of the time before the step).
 
     Halley's method on t^m, with m chosen so that t^m is nearly linear in u: −2/3 on ellipses, −2 on
     hyperbolas beyond 180°, 2 on hyperbolas below.

@@ -127,23 +127,41 @@ def solve(sigma, delta, t, revs, right):
     if revs == 0:
         kind, z, low, high = _zero_rev_start(sigma, delta, t)
     else:
-        q, w, t_least, bend = least_time(sigma, delta, revs)
-        if t < t_least:
-            return math.nan, math.nan, False
-        kind, high, low = (_FROM_W, w, 0.0) if right else (_FROM_Q, q, 0.0)
-        above = delta if (right == (sigma > 0.0)) else 1.0 + abs(sigma)
-        turns = revs if right else revs + 1.0
-        far = above * 0.5 * (turns * math.pi / t) ** (2 / 3)
-        close = high - math.sqrt(2.0 * (t - t_least) / bend)
-        z = min(max(far, close), 0.5 * (high + max(close, 0.0)))
-    z = _root(kind, z, low, high, sigma, delta, t, revs)
+        t_middle = sigma + (revs + 0.5) * math.pi
+        if t >= t_middle:
+            # u = 0 is flown faster than t: the roots lie on either side of it, whatever the least time is
+            kind, low, high = (_FROM_W if right else _FROM_Q), 0.0, 1.0
+            far = _far_root(sigma, delta, t, revs, right)
+            middle = _far_root(sigma, delta, t_middle, revs, right)
+            z = min(far * (1.0 + (1.0 / middle - 1.0) * far / middle), 1.0)
+        else:
+            q, w, t_least, bend = least_time(sigma, delta, revs)
+            if t < t_least:
+                return math.nan, math.nan, False
+            close = math.sqrt(2.0 * (t - t_least) / bend)
+            if right == (q > 1.0):  # between the least time and the end of u on its side
+                kind, low, high = (_FROM_W if right else _FROM_Q), 0.0, (w if right else q)
+                z = min(max(_far_root(sigma, delta, t, revs, right), high - close), 0.5 * (high + max(high - close, 0.0)))
+            else:  # between the least time and u = 0
+                kind, low, high = (_FROM_Q if right else _FROM_W), (q if right else w), 1.0
+                z = min(low + close, 0.5 * (low + 1.0))
+    z = _root(kind, z, low, high, sigma, delta, t, revs, right)
     _, _, p, h = _shape(kind, z, sigma, delta)
     return p, h, True
 
 
 @njit(**PLAIN)
-def _root(kind, z, low, high, sigma, delta, t, revs):
-    rising = kind == _FROM_P  # t falls with every other unknown
+def _far_root(sigma, delta, t, revs, right):
+    """q (left) or 1 − u (right) for t → ∞, where t falls as its power −3/2."""
+    above = delta if (right == (sigma > 0.0)) else 1.0 + abs(sigma)
+    turns = revs if right else revs + 1.0
+    return above * 0.5 * (turns * math.pi / t) ** (2 / 3)
+
+
+@njit(**PLAIN)
+def _root(kind, z, low, high, sigma, delta, t, revs, right):
+    # t falls as p falls, and as q or w does on the far side of the least time
+    rising = kind == _FROM_P or (revs > 0 and right == (kind == _FROM_Q))
     for _ in range(200):
         q, w, p, _ = _shape(kind, z, sigma, delta)
         g, a, b = _flight(q, w, p, sigma, revs)
@@ -153,7 +171,7 @@ def _root(kind, z, low, high, sigma, delta, t, revs):
         else:
             low = z
         # derivatives of ln t by ln z
-        du = -1.0 / sigma if rising else (-1.0 if kind == _FROM_W else 1.0)
+        du = -1.0 / sigma if kind == _FROM_P else (-1.0 if kind == _FROM_W else 1.0)
         d1 = z * du * a / g
         d2 = z * z * du * du * b / g + d1 - d1 * d1
         step = -miss * d1 / (d1 * d1 - 0.5 * miss * d2)

@@ -20,7 +20,7 @@ Route = list[Body | None]
 
 
 def load_scenario(path: str | Path, beside: Path | None = None) -> Scenario:
-    """Read a scenario file that the engine can sweep; relative kernel paths resolve from `beside` or the file.
+    """Read a scenario file the engine can sweep; relative kernel paths resolve from `beside` or the file.
 
     Raises RequestError with every fault of the file, each `FILE: KEY: what is wrong; what would be right`.
     """

@@ -14,8 +14,12 @@ def explain_closed(survey: Survey) -> list[str]:
     """Say in a few lines why no cell is allowed and what would open one; empty where some are."""
     if survey.provenance["cells_allowed"]:
         return []
+    forbidden = survey.provenance["cells_forbidden_by"]
+    if sum(forbidden[reason] for reason in REASONS) == survey.provenance["cells"]:
+        return ["No cell can be flown at all: look at the date windows."]
     lines = ["The limits forbid every cell."]
-    worst = max(flag_shares(survey), key=lambda share: share.share)
+    limits = [share for share in flag_shares(survey) if share.title not in REASONS.values()]
+    worst = max(limits, key=lambda share: share.share)
     lines.append(f"Most costly: {worst.title}, which forbids {100 * worst.share:.1f} % of the grid.")
     openers = [line for bound in survey.plan.bounds if (line := _would_open(survey, bound))]
     return lines + (openers or [_nearest_cell(survey)])
@@ -50,8 +54,6 @@ def _nearest_cell(survey: Survey) -> str:
             fewest, cell = int(count[i, j]), (offset + int(i), int(j))
             names = [name for bit, name in enumerate(meanings) if int(blocked[i, j]) >> bit & 1]
         offset += len(blocked)
-    if fewest == 99:
-        return "No cell can be flown at all: look at the date windows."
     at = survey.grid.isel(departure=cell[0], arrival=cell[1])
     needs = ", ".join(f"{name} {float(at[name]):.4g}" for name in names)
     dates = " to ".join(str(at[side].values)[:10] for side in ("departure", "arrival"))

@@ -6,6 +6,7 @@ import hashlib
 import json
 import os
 import shutil
+from datetime import UTC, datetime
 from pathlib import Path
 from typing import Any
 
@@ -15,7 +16,11 @@ from porkgrid.survey.ledger import LEDGER
 from porkgrid.survey.store import STORE
 
 SCENARIO, PROVENANCE, CANDIDATES, FIGURES = "scenario.toml", "survey.json", "candidates.csv", "figures"
-OURS = (SCENARIO, PROVENANCE, CANDIDATES, FIGURES, STORE, LEDGER)
+OURS = (SCENARIO, CANDIDATES, FIGURES, STORE, LEDGER)  # besides survey.json, which says that they are
+PART = ".part"  # ending of a file that is being written
+
+# States of a survey: its folder is taken, its store is there, all is written.
+CLAIMED, RUNNING, COMPLETE = "claimed", "running", "complete"
 
 
 def folder_of(scenario: Scenario, out: str | Path | None) -> Path:
@@ -23,10 +28,15 @@ def folder_of(scenario: Scenario, out: str | Path | None) -> Path:
     return Path(out) if out is not None else Path("surveys") / scenario.slug
 
 
+def asked(scenario: Scenario) -> dict[str, Any]:
+    """What the scenario asks for, whatever the comments and the layout of its file and whence it is read."""
+    kernels = [str(path.absolute()) for path in scenario.kernels]
+    return scenario.model_dump(mode="json", exclude={"path", "text", "description"}) | {"kernels": kernels}
+
+
 def fingerprint(scenario: Scenario) -> str:
-    """A checksum of what the scenario asks for; comments and layout of the file do not count."""
-    asked = scenario.model_dump(mode="json", exclude={"path", "text", "description"})
-    return hashlib.sha256(json.dumps(asked, sort_keys=True).encode()).hexdigest()
+    """A checksum of what the scenario asks for."""
+    return hashlib.sha256(json.dumps(asked(scenario), sort_keys=True).encode()).hexdigest()
 
 
 def read_provenance(folder: Path) -> dict[str, Any]:
@@ -40,8 +50,8 @@ def read_provenance(folder: Path) -> dict[str, Any]:
         ) from None
     except (ValueError, OSError) as error:
         raise RequestError(f"{path}: cannot be read as a survey's provenance: {error}") from None
-    if not isinstance(provenance, dict) or "fingerprint" not in provenance:
-        raise RequestError(f"{path}: not the provenance of a porkgrid survey: it has no fingerprint")
+    if not isinstance(provenance, dict) or not {"fingerprint", "state"} <= provenance.keys():
+        raise RequestError(f"{path}: not the provenance of a porkgrid survey: no fingerprint, no state")
     return provenance
 
 
@@ -52,7 +62,7 @@ def write_provenance(folder: Path, provenance: dict[str, Any]) -> None:
 
 def write_whole(path: Path, text: str) -> None:
     """Write a text file so that no reader ever finds it half-written."""
-    part = path.with_name(path.name + ".part")
+    part = path.with_name(path.name + PART)
     with part.open("w", encoding="utf-8") as file:
         file.write(text)
         file.flush()
@@ -61,28 +71,39 @@ def write_whole(path: Path, text: str) -> None:
 
 
 def claim(folder: Path, scenario: Scenario, fresh: bool) -> bool:
-    """Make the folder ready for the scenario's survey; True where one is already begun in it.
+    """Make the folder ready for the scenario's survey; True where one is already running or complete in it.
 
-    RequestError where the folder holds something else: it is never written over, except that `fresh`
-    removes what an earlier survey of ours left there.
+    RequestError where the folder holds something else. Nothing is removed but what a survey.json, which is
+    the first file in a folder of ours, vouches for: under `fresh`, or of a sweep killed before its store was.
     """
     if folder.exists() and not folder.is_dir():
         raise RequestError(f"{folder}: is a file; give a folder with --out")
     held = sorted(each.name for each in folder.iterdir()) if folder.exists() else []
-    if fresh and PROVENANCE in held:
-        read_provenance(folder)
-        _clear(folder)
-        held = []
+    foreign = [name for name in held if name != PROVENANCE + PART]
     if PROVENANCE in held:
-        _same_scenario(folder, scenario)
-        return True
-    foreign = [name for name in held if name not in OURS]
-    if foreign:
+        state = read_provenance(folder)["state"]
+        if not fresh:
+            _same_scenario(folder, scenario)
+            if state != CLAIMED:
+                return True
+    elif foreign:
         raise RequestError(f"{folder}: holds other files ({foreign[0]}, …); give another folder with --out")
-    _clear(folder)  # of a survey that was killed before it began
-    (folder / FIGURES).mkdir(parents=True, exist_ok=True)
+    folder.mkdir(parents=True, exist_ok=True)
+    write_provenance(folder, _first_provenance(scenario))
+    _clear(folder)
+    (folder / FIGURES).mkdir()
     write_whole(folder / SCENARIO, scenario.text)
     return False
+
+
+def _first_provenance(scenario: Scenario) -> dict[str, Any]:
+    return {
+        "name": scenario.name,
+        "state": CLAIMED,
+        "fingerprint": fingerprint(scenario),
+        "asked": asked(scenario),
+        "started": datetime.now(UTC).isoformat(timespec="seconds"),
+    }
 
 
 def _same_scenario(folder: Path, scenario: Scenario) -> None:
@@ -97,8 +118,8 @@ def _same_scenario(folder: Path, scenario: Scenario) -> None:
 
 
 def _differences(held: dict[str, Any], scenario: Scenario) -> list[str]:
-    asked = scenario.model_dump(mode="json", exclude={"path", "text", "description"})
-    return [key for key in asked if asked[key] != held.get(key)] or ["its version"]
+    wanted = asked(scenario)
+    return [key for key in wanted if wanted[key] != held.get(key)] or ["its version"]
 
 
 def _clear(folder: Path) -> None:
@@ -108,3 +129,4 @@ def _clear(folder: Path) -> None:
             shutil.rmtree(path)
         else:
             path.unlink(missing_ok=True)
+        path.with_name(name + PART).unlink(missing_ok=True)

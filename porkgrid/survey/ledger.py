@@ -32,16 +32,23 @@ def enter(ledger: IO[bytes], sums: TileSums) -> None:
 
 
 def read_ledger(folder: Path) -> dict[int, TileSums]:
-    """The tiles that are on disk, by number. A torn last line does not count."""
+    """The tiles that are on disk, by number. A line that a crash has torn or blotted does not count."""
     path = folder / LEDGER
     if not path.exists():
         return {}
     entries = {}
     for line in path.read_bytes().splitlines(keepends=True):
-        if line.endswith(b"\n"):
-            sums = TileSums(**json.loads(line))
+        sums = _entry(line) if line.endswith(b"\n") else None
+        if sums is not None:
             entries[sums.tile] = sums
     return entries
+
+
+def _entry(line: bytes) -> TileSums | None:
+    try:
+        return TileSums(**json.loads(line))
+    except (ValueError, TypeError):
+        return None
 
 
 def totals(entries: Iterable[TileSums], rank_sign: float) -> TileSums:

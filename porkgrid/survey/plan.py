@@ -8,6 +8,7 @@ from functools import cached_property
 
 import numpy as np
 
+from porkgrid.errors import RequestError
 from porkgrid.scenario import Orbit, Parking, Scenario
 from porkgrid.sky.bodies import Body, find_body
 from porkgrid.sky.kernel import Ephemeris, open_ephemeris
@@ -80,7 +81,12 @@ class Plan:
 
 
 def make_plan(scenario: Scenario) -> Plan:
-    """Look up everything a sweep of the scenario needs. RequestError where the sky has no such states."""
+    """Look up what a sweep of the scenario needs. RequestError for a flyby or states that no kernel has."""
+    if len(scenario.encounters) > 2:
+        raise RequestError(
+            f"{scenario.path}: encounter 2, flyby: routes with flybys cannot be swept yet; "
+            "give the departure and the arrival only"
+        )
     ephemeris = open_ephemeris(scenario.kernels)
     extra = scenario.own_bodies
     bodies = [find_body(encounter.body, extra) for encounter in scenario.encounters]

@@ -12,7 +12,7 @@ import xarray as xr
 from porkgrid.errors import RequestError
 from porkgrid.scenario import Scenario
 from porkgrid.survey.admit import load_scenario
-from porkgrid.survey.folder import CANDIDATES, SCENARIO, read_provenance
+from porkgrid.survey.folder import CANDIDATES, COMPLETE, SCENARIO, read_provenance
 from porkgrid.survey.plan import Plan, make_plan
 from porkgrid.survey.store import STORE
 
@@ -52,7 +52,7 @@ def open_survey(path: str | Path) -> Survey:
     """Open a survey folder. RequestError where it is none, or is not finished."""
     folder = Path(path)
     provenance = read_provenance(folder)
-    if provenance.get("state") != "complete":
+    if provenance["state"] != COMPLETE:
         raise RequestError(
             f"{folder}: the sweep is not finished; `porkgrid sweep` with the same scenario goes on"
         )

@@ -61,7 +61,7 @@ def sweep(
     with _disk_faults(folder):
         begun = folders.claim(folder, scenario, fresh)
         provenance = folders.read_provenance(folder) if begun else _begin(folder, plan)
-        if provenance["state"] != "complete":
+        if provenance["state"] != folders.COMPLETE:
             _fill(folder, plan, workers or os.cpu_count() or 1, report)
         _finish(folder, plan, provenance)
     return open_survey(folder)
@@ -70,14 +70,10 @@ def sweep(
 def _begin(folder: Path, plan: Plan) -> dict[str, Any]:
     create_store(folder, plan, version("porkgrid"))
     scenario = plan.scenario
-    provenance: dict[str, Any] = {
-        "name": scenario.name,
+    provenance = folders.read_provenance(folder) | {
         "route": plan.route,
         "scenario_folder": str(scenario.path.absolute().parent),
-        "state": "running",
-        "fingerprint": folders.fingerprint(scenario),
-        "asked": scenario.model_dump(mode="json", exclude={"path", "text", "description"}),
-        "started": datetime.now(UTC).isoformat(timespec="seconds"),
+        "state": folders.RUNNING,
         "versions": {
             name: version(name) for name in ("porkgrid", "numpy", "numba", "jplephem", "zarr", "xarray")
         }
@@ -145,13 +141,13 @@ def _finish(folder: Path, plan: Plan, provenance: dict[str, Any]) -> None:
     table = tabulate(plan, epochs)
     folders.write_whole(folder / folders.CANDIDATES, table.to_csv(index=False, float_format="%.13g"))
     sums = totals(read_ledger(folder).values(), plan.rank_sign)
-    if provenance["state"] == "complete":
+    if provenance["state"] == folders.COMPLETE:
         return
     started = datetime.fromisoformat(provenance["started"])
     seconds = (datetime.now(UTC) - started).total_seconds()
     solves = sums.cells * sum(len(options) for options in plan.options)
     provenance |= {
-        "state": "complete",
+        "state": folders.COMPLETE,
         "finished": datetime.now(UTC).isoformat(timespec="seconds"),
         "seconds": seconds,
         "cells": sums.cells,

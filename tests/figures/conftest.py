@@ -5,10 +5,13 @@ from __future__ import annotations
 from collections.abc import Callable
 from itertools import combinations
 
+import matplotlib
 import pytest
 from matplotlib.figure import Figure
 from matplotlib.text import Text
 from matplotlib.transforms import Bbox
+
+from porkgrid.figures.style import SETTINGS
 
 Placed = list[tuple[Text, Bbox]]
 
@@ -17,6 +20,7 @@ Placed = list[tuple[Text, Bbox]]
 def placed_texts() -> Callable[[Figure], Placed]:
     """Every visible text of a figure with its box in pixels, laid out as in the PNG."""
 
+    @matplotlib.rc_context(SETTINGS)
     def collect(figure: Figure) -> Placed:
         figure.draw_without_rendering()
         renderer = figure.canvas.get_renderer()  # type: ignore[attr-defined]

@@ -138,6 +138,14 @@ def test_names_are_shown_letter_by_letter_and_never_read_as_mathematics(placed_t
     assert f"Ephemeris: DE440 · porkgrid 0.1.0 · {grids.HOSTILE}" in words(placed)
 
 
+def test_a_thinned_grid_says_so_beside_kernel_and_version(placed_texts: Callable) -> None:
+    thinned = "drawn from every 2. departure and every 3. arrival date"
+    view = grids.usual(thinned=thinned, caution="Beware.")
+    figure = draw_chart(view, grids.bests_of(view, C3), grids.candidates_of(view, C3, 1), C3, None)
+    footer = f"Ephemeris: DE440 · porkgrid 0.1.0 · {thinned} · Beware."
+    assert footer in words(placed_texts(figure))
+
+
 def test_line_ends_in_a_name_become_blanks(placed_texts: Callable) -> None:
     view = grids.usual(title="one\ntwo\tthree\x00 four")
     figure = draw_chart(view, grids.bests_of(view, C3), grids.candidates_of(view, C3, 1), C3, None)
