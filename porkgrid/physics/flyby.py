@@ -15,11 +15,9 @@ from __future__ import annotations
 
 import math
 
-import numpy as np
 from numba import njit
-from numpy.typing import ArrayLike
 
-from porkgrid.physics.timeflight import PLAIN, ROW
+from porkgrid.physics.timeflight import ROW
 
 # Newton steps that settle y to the last digits from the start below (tests/physics/test_flyby.py).
 NEWTON_STEPS = 4

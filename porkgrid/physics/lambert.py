@@ -21,7 +21,18 @@ from numpy.typing import ArrayLike
 
 from porkgrid.physics.constants import OBLIQUITY_J2000_ARCSEC
 from porkgrid.physics.products import cross
-from porkgrid.physics.timeflight import PLAIN, ROW, SETTLED, U_MAX_ROW, halley_row, halley_step, start_row
+from porkgrid.physics.timeflight import (
+    PLAIN,
+    ROW,
+    SETTLED,
+    U_MAX_ROW,
+    U_MAX_WIDE,
+    any_beyond,
+    first_step_row,
+    halley_step,
+    last_step_row,
+    start_row,
+)
 from porkgrid.physics.timeroot import solve
 
 _OBLIQUITY = math.radians(OBLIQUITY_J2000_ARCSEC / 3600.0)
@@ -38,15 +49,22 @@ _LEAST_SINE = 1e-10
 _LEAST_P_ROW = 1e-3
 
 # Rows of scratch that one call of `lambert_row` needs.
-SCRATCH_ROWS = 10
+SCRATCH_ROWS = 8
 
 # Problems a call of `lambert_row` should get: its twenty or so arrays then stay in the second-level cache.
 BLOCK = 512
 
 
 @njit(**ROW)
-def _geometry_row(r1, r2, tof, gm, pole, way, d1, d2, sigma, delta, t, sine2):
-    """Radii d1, d2, and the scaled problem: σ, δ = 1 − |σ|, the time t, and sin²θ.
+def norm_row(r, d):
+    """d (m,) gets the lengths of the columns of r (3, m)."""
+    for j in range(d.shape[0]):
+        d[j] = math.sqrt(r[0, j] * r[0, j] + r[1, j] * r[1, j] + r[2, j] * r[2, j])
+
+
+@njit(**ROW)
+def _geometry_row(r1, d1, r2, d2, tof, gm, pole, way, sigma, delta, t, apart):
+    """The scaled problem: σ, δ = 1 − |σ| and the time t; `apart` < 0 where the plane is undefined.
 
     `way` is +1 prograde, −1 retrograde.
     """
@@ -55,22 +73,21 @@ def _geometry_row(r1, r2, tof, gm, pole, way, d1, d2, sigma, delta, t, sine2):
         bx, by, bz = r2[0, j], r2[1, j], r2[2, j]
         nx, ny, nz = cross(ax, ay, az, bx, by, bz)
         dx, dy, dz = bx - ax, by - ay, bz - az
-        a = math.sqrt(ax * ax + ay * ay + az * az)
-        b = math.sqrt(bx * bx + by * by + bz * bz)
+        a, b = d1[j], d2[j]
         total = a + b
         dot = ax * bx + ay * by + az * bz
         n2 = nx * nx + ny * ny + nz * nz
         # |r1||r2| + r1·r2 without cancellation: their product with the minus sign is |r1 × r2|²
         large = a * b + abs(dot)
-        plus = large if dot > 0.0 else n2 / large
-        size = math.sqrt(2.0 * plus) / total
+        per_both = 1.0 / (large * total)
+        per_total = per_both * large
+        plus = large if dot > 0.0 else n2 * (per_both * total)
+        size = math.sqrt(2.0 * plus) * per_total
         up = (nx * pole[0] + ny * pole[1] + nz * pole[2]) * way
         sigma[j] = size if up >= 0.0 else -size
-        per_total = 1.0 / total
-        d1[j], d2[j] = a, b
         delta[j] = (dx * dx + dy * dy + dz * dz) * per_total * per_total / (1.0 + size)
         t[j] = tof[j] * per_total * math.sqrt(2.0 * gm * per_total)
-        sine2[j] = n2 / (a * a * b * b)
+        apart[j] = n2 - (_LEAST_SINE * a * b) * (_LEAST_SINE * a * b)
 
 
 @njit(**ROW)
@@ -84,7 +101,7 @@ def _finish_row(sigma, delta, q, p, h):
 
 
 @njit(**ROW)
-def _velocity_row(r1, r2, gm, d1, d2, sigma, p, h, v1, v2):
+def _velocity_row(r1, d1, r2, d2, gm, sigma, p, h, v1, v2):
     """Velocities (3, m) from the shape; the formulas are in the module's docstring."""
     for j in range(p.shape[0]):
         ax, ay, az = r1[0, j], r1[1, j], r1[2, j]
@@ -92,13 +109,16 @@ def _velocity_row(r1, r2, gm, d1, d2, sigma, p, h, v1, v2):
         nx, ny, nz = cross(ax, ay, az, bx, by, bz)
         a, b = d1[j], d2[j]
         total = a + b
-        # r2 − r1 as a difference of squares keeps its digits where the radii are nearly equal
-        rise = ((bx - ax) * (bx + ax) + (by - ay) * (by + ay) + (bz - az) * (bz + az)) / total
-        s = sigma[j]
-        k = math.sqrt(2.0 * gm / (total * p[j]))
-        per_ab = 1.0 / (a * b)
+        s, pj, ab = sigma[j], p[j], a * b
+        # every quotient below from one division
+        per_all = 1.0 / (s * total * pj * ab)
+        per_total = per_all * s * pj * ab
+        per_ab = per_all * s * total * pj
         per_a, per_b = b * per_ab, a * per_ab
-        across = k / (s * total)
+        k = math.sqrt(2.0 * gm * per_all * s * ab)
+        across = k * per_all * pj * ab
+        # r2 − r1 as a difference of squares keeps its digits where the radii are nearly equal
+        rise = ((bx - ax) * (bx + ax) + (by - ay) * (by + ay) + (bz - az) * (bz + az)) * per_total
         radial = k * (h[j] + 0.5 * s * rise * per_a) * per_a
         turn = across * per_a * per_a
         v1[0, j] = radial * ax + turn * (ny * az - nz * ay)
@@ -112,34 +132,34 @@ def _velocity_row(r1, r2, gm, d1, d2, sigma, p, h, v1, v2):
 
 
 @njit(**ROW)
-def _sort_out_row(t, sine2, status):
+def _sort_out_row(t, apart, status):
     """Mark the problems that have no answer before they are tried."""
     for j in range(t.shape[0]):
-        code = NO_PLANE if sine2[j] < _LEAST_SINE * _LEAST_SINE else FLOWN
+        code = NO_PLANE if apart[j] < 0.0 else FLOWN
         code = NOT_AFTER if t[j] <= 0.0 else code
         # x − x is 0 for finite x only
-        status[j] = code if (t[j] - t[j]) + (sine2[j] - sine2[j]) == 0.0 else BAD_INPUT
+        status[j] = code if (t[j] - t[j]) + (apart[j] - apart[j]) == 0.0 else BAD_INPUT
 
 
 @njit(**ROW)
-def _count_unsettled(q, error, p, status):
+def _count_unsettled(q, error, p, status, q_max):
     """How many problems the Halley steps have not settled, those without an answer included."""
     count = 0
     for j in range(q.shape[0]):
-        settled = (abs(error[j]) < SETTLED) & (q[j] < 1.0 + U_MAX_ROW) & (p[j] > _LEAST_P_ROW)
+        settled = (abs(error[j]) < SETTLED) & (q[j] < q_max) & (p[j] > _LEAST_P_ROW)
         count += 0 if settled & (status[j] == FLOWN) else 1
     return count
 
 
 @njit(**PLAIN)
-def _settle_row(sigma, delta, t, q, error, p, h, status):
+def _settle_row(sigma, delta, t, q, error, p, h, status, q_max):
     """Finish what two Halley steps have not settled: with more of them, else in a bracket."""
-    if _count_unsettled(q, error, p, status) == 0:
+    if _count_unsettled(q, error, p, status, q_max) == 0:
         return
     for j in range(t.shape[0]):
         if status[j] != FLOWN:
             p[j] = h[j] = math.nan
-        elif not (abs(error[j]) < SETTLED and q[j] < 1.0 + U_MAX_ROW and p[j] > _LEAST_P_ROW):
+        elif not (abs(error[j]) < SETTLED and q[j] < q_max and p[j] > _LEAST_P_ROW):
             p[j], h[j] = _settle(sigma[j], delta[j], t[j], q[j])
 
 
@@ -147,9 +167,9 @@ def _settle_row(sigma, delta, t, q, error, p, h, status):
 def _settle(sigma, delta, t, q):
     above = 1.0 + sigma if sigma > 0.0 else delta
     for _ in range(3):
-        if not (0.0 < q < 1.0 + U_MAX_ROW and above - sigma * q > _LEAST_P_ROW):
+        if not (0.0 < q < 1.0 + U_MAX_WIDE and above - sigma * q > _LEAST_P_ROW):
             break
-        q, error = halley_step(sigma, delta, t, q)
+        q, error = halley_step(sigma, delta, t, q, True)
         if abs(error) < SETTLED and above - sigma * q > _LEAST_P_ROW:
             return above - sigma * q, above - q
     p, h, _ = solve(sigma, delta, t, 0, False)
@@ -167,45 +187,48 @@ def _revolutions_row(sigma, delta, t, revs, right, p, h, status):
 
 
 @njit(**PLAIN)
-def lambert_row(r1, r2, tof, gm, pole, way, revs, right, scratch, v1, v2, status):
+def lambert_row(r1, d1, r2, d2, tof, gm, pole, way, revs, right, scratch, v1, v2, status):
     """Solve a row of problems.
 
-    r1, r2, v1, v2 (3, m) km and km/s; tof (m,) s; status (m,) int8 gets what became of each problem;
-    scratch (SCRATCH_ROWS, m). Velocities of problems that are not FLOWN are NaN.
+    r1, r2, v1, v2 (3, m) km and km/s; d1, d2 (m,) lengths of r1 and r2; tof (m,) s; status (m,) int8 gets
+    what became of each problem; scratch (SCRATCH_ROWS, m).
+    Velocities of problems that are not FLOWN are NaN.
     """
-    sigma, delta, t, sine2 = scratch[0], scratch[1], scratch[2], scratch[3]
+    sigma, delta, t, apart = scratch[0], scratch[1], scratch[2], scratch[3]
     q, error, p, h = scratch[4], scratch[5], scratch[6], scratch[7]
-    d1, d2 = scratch[8], scratch[9]
-    _geometry_row(r1, r2, tof, gm, pole, way, d1, d2, sigma, delta, t, sine2)
-    _sort_out_row(t, sine2, status)
+    _geometry_row(r1, d1, r2, d2, tof, gm, pole, way, sigma, delta, t, apart)
+    _sort_out_row(t, apart, status)
     if revs == 0:
         start_row(sigma, delta, t, q)
-        halley_row(sigma, delta, t, q, error)
-        halley_row(sigma, delta, t, q, error)
+        wide = any_beyond(q, 1.0 + U_MAX_ROW)  # short flights; most rows have none
+        first_step_row(sigma, delta, t, q, wide)
+        last_step_row(sigma, delta, t, q, error, wide)
         _finish_row(sigma, delta, q, p, h)
-        _settle_row(sigma, delta, t, q, error, p, h, status)
+        q_max = 1.0 + (U_MAX_WIDE if wide else U_MAX_ROW)
+        _settle_row(sigma, delta, t, q, error, p, h, status, q_max)
     else:
         _revolutions_row(sigma, delta, t, revs, right, p, h, status)
-    _velocity_row(r1, r2, gm, d1, d2, sigma, p, h, v1, v2)
+    _velocity_row(r1, d1, r2, d2, gm, sigma, p, h, v1, v2)
 
 
 @njit(**PLAIN)
 def _lambert_blocks(r1, r2, tof, gm, pole, way, revs, right, v1, v2, status):
     """`lambert_row` over long arrays, a block at a time."""
-    size = min(BLOCK, tof.shape[0])
-    scratch = np.empty((SCRATCH_ROWS, size))
-    a, b, c, d = np.empty((3, size)), np.empty((3, size)), np.empty((3, size)), np.empty((3, size))
-    for start in range(0, tof.shape[0], size):
-        stop = min(start + size, tof.shape[0])
+    for start in range(0, tof.shape[0], BLOCK):
+        stop = min(start + BLOCK, tof.shape[0])
         n = stop - start
-        if n < size:
-            scratch = np.empty((SCRATCH_ROWS, n))
-            a, b, c, d = np.empty((3, n)), np.empty((3, n)), np.empty((3, n)), np.empty((3, n))
+        scratch = np.empty((SCRATCH_ROWS, n))
+        a, b, c, d = np.empty((3, n)), np.empty((3, n)), np.empty((3, n)), np.empty((3, n))
+        d1, d2 = np.empty(n), np.empty(n)
         for j in range(n):
             for i in range(3):
                 a[i, j] = r1[start + j, i]
                 b[i, j] = r2[start + j, i]
-        lambert_row(a, b, tof[start:stop], gm, pole, way, revs, right, scratch, c, d, status[start:stop])
+        norm_row(a, d1)
+        norm_row(b, d2)
+        lambert_row(
+            a, d1, b, d2, tof[start:stop], gm, pole, way, revs, right, scratch, c, d, status[start:stop]
+        )
         for j in range(n):
             for i in range(3):
                 v1[start + j, i] = c[i, j]

@@ -141,7 +141,10 @@ def solve(sigma, delta, t, revs, right):
             close = math.sqrt(2.0 * (t - t_least) / bend)
             if right == (q > 1.0):  # between the least time and the end of u on its side
                 kind, low, high = (_FROM_W if right else _FROM_Q), 0.0, (w if right else q)
-                z = min(max(_far_root(sigma, delta, t, revs, right), high - close), 0.5 * (high + max(high - close, 0.0)))
+                z = min(
+                    max(_far_root(sigma, delta, t, revs, right), high - close),
+                    0.5 * (high + max(high - close, 0.0)),
+                )
             else:  # between the least time and u = 0
                 kind, low, high = (_FROM_Q if right else _FROM_W), (q if right else w), 1.0
                 z = min(low + close, 0.5 * (low + 1.0))

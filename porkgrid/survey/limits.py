@@ -35,14 +35,14 @@ class Bound:
     @property
     def title(self) -> str:
         """The limit in words, such as "C3 at most 25 km²/s²"."""
-        return f"{_plain(self.measure)} {self._range()}{_unit(self.measure)}"
+        return f"{_plain(self.measure)} {self._range().replace('-', '−')}{_unit(self.measure)}"
 
     def _range(self) -> str:
         if self.least is None:
             return f"at most {self.most:g}"
         if self.most is None:
             return f"at least {self.least:g}"
-        return f"{self.least:g} to {self.most:g}".replace("-", "−")
+        return f"{self.least:g} to {self.most:g}"
 
     def forbids(self, values: np.ndarray) -> np.ndarray:
         """Where values lie outside; NaN is never inside."""

