@@ -30,7 +30,7 @@ v_inf_arrival_km_s = { max = 4.5 }
 arrival_sep_deg = { min = 30 }
 
 [rank]
-apart_days = 30
+apart_days = 5
 """
 
 # Flights long enough for a revolution, where all three options exist in part of the grid.
