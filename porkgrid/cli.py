@@ -48,6 +48,8 @@ class Order(StrEnum):
 
 Formats = Annotated[list[Format], typer.Option("--format", help="Figure format; give it again for more.")]
 
+_INTERRUPTED = 130  # exit code
+
 # Columns of the candidates' table on the terminal, where the route has them; the file has all measures.
 _SHOWN = ("tof_days", "c3_km2_s2", "dla_deg", "v_inf_arrival_km_s", "dv_departure_km_s", "dv_capture_km_s",
           "dv_total_km_s", "leg1_revs")  # fmt: skip
@@ -300,15 +302,16 @@ def main() -> None:
         for line in str(error).splitlines():
             print(f"porkgrid: {line}", file=sys.stderr)
         code = 2 if isinstance(error, RequestError) else 1
-    except (KeyboardInterrupt, typer.Abort):  # typer turns the one into the other
-        print("porkgrid: interrupted; give the same command again to go on", file=sys.stderr)
-        code = 130
+    except (KeyboardInterrupt, typer.Abort):
+        code = _INTERRUPTED
     except OSError as error:
         place = "" if error.filename is None else f"{error.filename}: "
         print(f"porkgrid: {place}{error.strerror or error}", file=sys.stderr)
         code = 1
     except Exception as error:
         code = _usage_error(error)
+    if code == _INTERRUPTED:  # typer returns this of an interrupt rather than let it through
+        print("porkgrid: interrupted; give the same command again to go on", file=sys.stderr)
     sys.exit(code)
 
 

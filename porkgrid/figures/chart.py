@@ -22,7 +22,7 @@ from porkgrid.figures.ground import (
     read_ground,
 )
 from porkgrid.figures.key import SWATCH_PX, Column, draw_candidate_table, draw_colour_bar
-from porkgrid.figures.levels import Scale, value_scale, value_text
+from porkgrid.figures.levels import Numbers, Scale, date_scale, value_scale
 from porkgrid.figures.measured import Measured, read_measure
 from porkgrid.figures.overlay import LINE_INK, draw_candidates, draw_lines
 from porkgrid.figures.paint import COMMON_HATCH, NO_HATCH, plain_swatch, value_pixels
@@ -45,6 +45,7 @@ _COLUMN = (9.70, 13.08, 6.34, 0.52)
 _CAPTION_IN = 1.45
 _FLIGHT_TIME = "tof_days"
 _WORDS = {"least": "least", "most": "greatest"}
+_DATE_WORDS = {"least": "earliest", "most": "latest"}
 
 
 def draw_chart(
@@ -58,14 +59,16 @@ def draw_chart(
     lines: measure shown as labelled lines, or None. Raises KeyError for a measure that the view lacks.
     """
     measured, ground = read_measure(view, of), read_ground(view)
-    scale = value_scale(_values_that_matter(measured, ground), _order(view, of))
+    order = _order(view, of)
+    choose_scale = date_scale if measured.is_date else value_scale
+    scale = choose_scale(_values_that_matter(measured, ground), order)
     raster = raster_for(view, PANEL_BOX.right - PANEL_BOX.left, PANEL_BOX.top - PANEL_BOX.bottom)
     days = raster.departure, raster.arrival
     flight = days[1][None, :] - days[0][:, None]
     allowed = ground.kind == ALLOWED
 
     figure, sheet = new_slide()
-    draw_header(sheet, view, _headline(measured, ground, day_bests, scale, _order(view, of)), ground.flags)
+    draw_header(sheet, view, _headline(measured, ground, day_bests, scale, order), ground.flags)
     draw_footer(sheet, view)
     pixels = value_pixels(raster, ground, measured.values, measured.unit, scale)
     panel = draw_panel(figure, PANEL_BOX, raster.limits, pixels)
@@ -83,7 +86,7 @@ def draw_chart(
         figure, sheet, panel, _DEPARTURE_BOX, day_bests.departure, day_bests.departure_best, scale
     )
     draw_arrival_strip(figure, sheet, panel, _ARRIVAL_BOX, day_bests.arrival, day_bests.arrival_best, scale)
-    _name_strips(sheet, measured, _order(view, of))
+    _name_strips(sheet, measured, order)
     _draw_column(sheet, measured, scale, ground, second, candidates, view.attrs.get("rank_by") == of)
     return figure
 
@@ -107,15 +110,15 @@ def _headline(
     if scale is None or not np.isfinite(best).any():
         return [ground.allowed_text]
     at = int(np.nanargmin(best) if order == "least" else np.nanargmax(best))
-    value = measured.with_unit(value_text(float(best[at]), fine_step(scale)))
-    word = _WORDS[order]
+    value = measured.with_unit(scale.writing.text(float(best[at])))
+    word = _word(measured, order)
     leaving = iso_day(bests.departure[at])
     return [f"{word} allowed {measured.label} {value}, leaving {leaving}", ground.allowed_text]
 
 
-def fine_step(scale: Scale) -> float:
-    """Return the step to which single values are written: a hundredth of a band, as a power of ten."""
-    return float(10.0 ** np.floor(np.log10((scale.levels[1] - scale.levels[0]) / 50.0)))
+def _word(measured: Measured, order: str) -> str:
+    """Say which of a day's values a strip shows."""
+    return (_DATE_WORDS if measured.is_date else _WORDS)[order]
 
 
 def _state_what_is_missing(panel: Panel, sheet: Axes, measured: Measured, ground: Ground, room: Room) -> None:
@@ -131,7 +134,7 @@ def _state_what_is_missing(panel: Panel, sheet: Axes, measured: Measured, ground
 
 def _name_strips(sheet: Axes, measured: Measured, order: str) -> None:
     """Write what the strips show, in the corner between them."""
-    what = wrap(f"{_WORDS[order]} {measured.title}", _CAPTION_IN, SMALL_PT, 2)
+    what = wrap(f"{_word(measured, order)} {measured.title}", _CAPTION_IN, SMALL_PT, 2)
     x, below = _ARRIVAL_BOX.left, _DEPARTURE_BOX.right + 0.12
     put(sheet, x, 1.92, "\n".join([*what, "of each arrival day"]), SMALL_PT, va="top", color=SOFT_INK)
     caption = "\n".join([*what, "of each departure day"])
@@ -152,7 +155,8 @@ def _draw_column(
     column = Column(sheet, left, right, top, bottom)
     if scale is not None:
         better = {"least": "lower is better", "most": "higher is better"}[scale.order]
-        draw_colour_bar(column, scale, f"{measured.title}, {better}" if ranked else measured.title)
+        said = ranked and not measured.is_date
+        draw_colour_bar(column, scale, f"{measured.title}, {better}" if said else measured.title)
     if second is not None:
         column.line(second.title, color=LINE_INK, linewidth=0.9)
     if second is None or second.name != _FLIGHT_TIME:
@@ -161,7 +165,8 @@ def _draw_column(
         )
     _draw_ground_key(column, ground)
     if len(candidates):
-        draw_candidate_table(column, candidates, measured, fine_step(scale) if scale is not None else 0.001)
+        writing = Numbers(0.001) if scale is None else scale.writing
+        draw_candidate_table(column, candidates, measured, writing.text)
 
 
 def _draw_ground_key(column: Column, ground: Ground) -> None:

@@ -2,11 +2,17 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Callable, Iterable
+from functools import partial
 
 import numpy as np
 
+Ticks = tuple[np.ndarray, list[str]]
+
+UNIX_EPOCH_JD = 2_440_587.5  # 1970-01-01
+
 _MS_PER_DAY = 86_400_000.0
+_LONGEST_GAP = 2.1  # between two marks, in steps: months and the ends of months differ
 _HOUR_STEPS = (1, 2, 3, 6, 12)
 _DAY_STEPS = (1, 2, 5, 10)
 _MONTH_STEPS = (1, 2, 3, 6)
@@ -28,7 +34,7 @@ def dates_from_iso(texts: Iterable[str]) -> np.ndarray:
     return np.array([str(text) for text in texts], dtype="datetime64[ms]")
 
 
-def iso_day(date: np.datetime64) -> str:
+def iso_day(date: np.datetime64 | np.ndarray) -> str:
     """Return the calendar day of a date: 2028-11-30."""
     return str(np.datetime_as_string(date.astype("datetime64[D]")))
 
@@ -41,23 +47,38 @@ def cell_edges(days: np.ndarray) -> np.ndarray:
     return np.concatenate(([1.5 * days[0] - 0.5 * days[1]], middles, [1.5 * days[-1] - 0.5 * days[-2]]))
 
 
-def date_ticks(first_day: float, last_day: float, most: int) -> tuple[np.ndarray, list[str]]:
+def date_ticks(first_day: float, last_day: float, most: int) -> Ticks:
     """Return at most `most` round dates in the range, two or more if there are, as days and ISO labels."""
-    span = last_day - first_day
+    marks, _ = _round_dates(last_day - first_day, most)
+    return marks(first_day, last_day)
+
+
+def dates_around(first_day: float, last_day: float, most: int) -> np.ndarray:
+    """Return ascending round dates, in days, the first and last of which enclose the range; two at least."""
+    marks, step_days = _round_dates(max(last_day - first_day, 1.0), most)
+    pad = _LONGEST_GAP * step_days
+    days, _ = marks(first_day - pad, last_day + pad)
+    start = int(np.searchsorted(days, first_day, side="right")) - 1
+    end = max(int(np.searchsorted(days, last_day, side="left")), start + 1)
+    return days[start : end + 1]
+
+
+def _round_dates(span: float, most: int) -> tuple[Callable[[float, float], Ticks], float]:
+    """Choose the finest round step that cuts a span into few enough pieces: its marks, and its days."""
     if span > 2.0:
         for step in _DAY_STEPS:
             if span / step <= most:
-                return _day_ticks(first_day, last_day, step)
+                return partial(_day_ticks, step=step), float(step)
         for step in _MONTH_STEPS:
             if span / (30.5 * step) <= most - 0.5:
-                return _month_ticks(first_day, last_day, step)
+                return partial(_month_ticks, step=step), 31.0 * step
         for step in _YEAR_STEPS:
             if span / (365.25 * step) <= most - 0.5 or step == _YEAR_STEPS[-1]:
-                return _year_ticks(first_day, last_day, step)
+                return partial(_year_ticks, step=step), 366.0 * step
     for step in _HOUR_STEPS:
         if span * 24.0 / step <= most:
-            return _hour_ticks(first_day, last_day, step)
-    return _day_ticks(first_day, last_day, 1)
+            return partial(_hour_ticks, step=step), step / 24.0
+    return partial(_day_ticks, step=1), 1.0
 
 
 def _hour_ticks(first_day: float, last_day: float, step: int) -> tuple[np.ndarray, list[str]]:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
@@ -10,7 +10,7 @@ import numpy as np
 from matplotlib.axes import Axes
 
 from porkgrid.figures.dates import dates_from_iso
-from porkgrid.figures.levels import Scale, value_text
+from porkgrid.figures.levels import Scale
 from porkgrid.figures.marks import add_area, add_line, add_pixels, add_rectangle, add_segments
 from porkgrid.figures.measured import Measured
 from porkgrid.figures.style import BODY_PT, FAINT_INK, PIXELS_PER_INCH, SMALL_PT, SOFT_INK
@@ -74,29 +74,51 @@ class Column:
 
 def draw_colour_bar(column: Column, scale: Scale, heading: str) -> None:
     """Draw the bands of value side by side with their bounds; an arrow stands for all values worse still."""
-    least = scale.order == "least"
     column.heading(heading)
-    arrow, height, top = 0.18, 0.19, column.y
+    height, top = 0.19, column.y
+    if not scale.has_worse:
+        edges = _draw_closed_bar(column, scale, top, height)
+    else:
+        edges = _draw_bar_with_arrow(column, scale, top, height)
+    _number_edges(column, edges, top - height, scale)
+    column.y = top - height - 0.05 - _ROW - 0.1
+
+
+def _draw_closed_bar(column: Column, scale: Scale, top: float, height: float) -> np.ndarray:
+    """Draw bands that hold every value; return the places of their bounds."""
+    width = (column.width - 0.3) / len(scale.colours)
+    edges = column.left + 0.08 + width * np.arange(len(scale.levels))
+    _draw_bands(column, edges, scale.colours, top, height)
+    frame = {"fill": False, "edgecolor": SOFT_INK, "linewidth": 0.5}
+    add_rectangle(column.sheet, edges[0], top - height, edges[-1] - edges[0], height, **frame)
+    return edges
+
+
+def _draw_bar_with_arrow(column: Column, scale: Scale, top: float, height: float) -> np.ndarray:
+    """Draw bands with an arrow at their worse end; return the places of their bounds."""
+    least, arrow = scale.order == "least", 0.18
     width = (column.width - arrow - 0.3) / (len(scale.levels) - 1)
     left = column.left + 0.08 + (0.0 if least else arrow)
     edges = left + width * np.arange(len(scale.levels))
-    for edge, colour in zip(edges[:-1], scale.colours[:-1] if least else scale.colours[1:], strict=True):
-        add_rectangle(column.sheet, float(edge), top - height, width, height, facecolor=colour, linewidth=0)
-
+    _draw_bands(column, edges, scale.colours[:-1] if least else scale.colours[1:], top, height)
     base, tip = (edges[-1], edges[-1] + arrow) if least else (edges[0], edges[0] - arrow)
     far = edges[0] if least else edges[-1]
     point = [(base, top), (tip, top - height / 2), (base, top - height)]
     add_area(column.sheet, point, facecolor=scale.colours[-1 if least else 0], linewidth=0)
     outline = [*point, (far, top - height), (far, top)]
     add_area(column.sheet, outline, fill=False, edgecolor=SOFT_INK, linewidth=0.5)
-    _number_edges(column, edges, top - height, scale)
-    column.y = top - height - 0.05 - _ROW - 0.1
+    return edges
+
+
+def _draw_bands(column: Column, edges: np.ndarray, colours: np.ndarray, top: float, height: float) -> None:
+    width = float(edges[1] - edges[0])
+    for edge, colour in zip(edges[:-1], colours, strict=True):
+        add_rectangle(column.sheet, float(edge), top - height, width, height, facecolor=colour, linewidth=0)
 
 
 def _number_edges(column: Column, edges: np.ndarray, y: float, scale: Scale) -> None:
     """Write the bounds of the bands under the bar: every one, or every n-th where they would touch."""
-    step = float(scale.levels[1] - scale.levels[0])
-    texts = [value_text(float(level), step) for level in scale.levels]
+    texts = scale.texts
     widest = max(width_in(text, SMALL_PT) for text in texts)
     stride = int(np.ceil((widest + 0.1) / (edges[1] - edges[0])))
     add_segments(
@@ -110,7 +132,7 @@ def _number_edges(column: Column, edges: np.ndarray, y: float, scale: Scale) -> 
 
 
 def draw_candidate_table(
-    column: Column, candidates: pd.DataFrame, measured: Measured, value_step: float
+    column: Column, candidates: pd.DataFrame, measured: Measured, write: Callable[[float], str]
 ) -> None:
     """List the candidates by number with dates, flight time and the measure drawn, as many as fit."""
     column.y -= 0.04
@@ -132,7 +154,7 @@ def draw_candidate_table(
         # One text for all of a row's digits: setting each cell apart would take as long as drawing the grid.
         put(column.sheet, right, column.y, "".join(cells), SMALL_PT, ha="right")
         if head:
-            value = value_text(float(candidates[measured.name].iloc[i]), value_step)
+            value = write(float(candidates[measured.name].iloc[i]))
             put(column.sheet, column.right - 0.05, column.y, value, SMALL_PT, ha="right")
     if shown < len(candidates):
         column.y -= _ROW

@@ -10,6 +10,8 @@ import xarray as xr
 
 from porkgrid.figures.text import one_line
 
+_EPOCH = "_epoch_jd_tdb"  # the names of all measures that are epochs end so
+_JULIAN = " (JD TDB)"  # and so their symbols
 _SIGNS = {r"\Delta ": "Δ", r"\Delta": "Δ", r"\infty": "∞", r"\oplus": "⊕", r"\odot": "☉"}
 
 
@@ -18,7 +20,7 @@ class Measured:
     """A measure on a grid.
 
     values: (departure, arrival) float, NaN where unknown. label: as on axes, "C3". unit: "km²/s²", or "" if
-    it has none.
+    it has none; of an epoch its time scale.
     """
 
     name: str
@@ -27,13 +29,18 @@ class Measured:
     unit: str
 
     @property
+    def is_date(self) -> bool:
+        """Tell whether the values are epochs, to be written as calendar dates."""
+        return self.name.endswith(_EPOCH)
+
+    @property
     def title(self) -> str:
         """Return label and unit for an axis."""
         return f"{self.label} ({self.unit})" if self.unit else self.label
 
     def with_unit(self, number: str) -> str:
         """Return a number followed by the unit."""
-        return f"{number} {self.unit}" if self.unit else number
+        return f"{number} {self.unit}" if self.unit and not self.is_date else number
 
 
 def read_measure(view: xr.Dataset, name: str) -> Measured:
@@ -51,9 +58,10 @@ def read_measure(view: xr.Dataset, name: str) -> Measured:
     values = np.broadcast_to(values, shape)
     values = np.where(np.isfinite(values), values, np.nan)
     unit = one_line(variable.attrs.get("units", ""))
-    return Measured(
-        name, values, plain_symbol(variable.attrs.get("symbol", name)), "" if unit == "1" else unit
-    )
+    label = plain_symbol(variable.attrs.get("symbol", name))
+    if name.endswith(_EPOCH):
+        return Measured(name, values, f"{label.removesuffix(_JULIAN)} date", "TDB")
+    return Measured(name, values, label, "" if unit == "1" else unit)
 
 
 def plain_symbol(symbol: str) -> str:

@@ -10,7 +10,7 @@ from matplotlib.axes import Axes
 from matplotlib.patheffects import withStroke
 
 from porkgrid.figures.dates import dates_from_iso, days_from_dates
-from porkgrid.figures.levels import range_that_matters, round_levels, value_text
+from porkgrid.figures.levels import Dates, Numbers, date_levels, range_that_matters, round_levels
 from porkgrid.figures.marks import add_line, add_segments
 from porkgrid.figures.measured import Measured
 from porkgrid.figures.panel import Panel
@@ -45,8 +45,7 @@ def draw_lines(
     values = measured.values[seen & np.isfinite(measured.values)]
     if values.size == 0 or min(measured.values.shape) < 2:
         return
-    levels = round_levels(*range_that_matters(values), _LINES)
-    step = float(levels[1] - levels[0])
+    levels, texts = _levels_of(measured, values)
     stride = max(1, int(np.ceil(max(measured.values.shape) / _MOST_POINTS)))
     thinned = cut_turns(measured.values, measured.unit)[::stride, ::stride]
     if min(thinned.shape) < 2:
@@ -60,10 +59,18 @@ def draw_lines(
         linewidths=0.8,
         linestyles="solid",
     )
-    for level, path in zip(drawn.levels, drawn.get_paths(), strict=True):
-        text = value_text(float(level), step)
+    for text, path in zip(texts, drawn.get_paths(), strict=True):
         pieces = [np.asarray(piece) for piece in path.to_polygons(closed_only=False)]
         _label_longest(panel, sheet, text, [piece for piece in pieces if len(piece) > 1], room)
+
+
+def _levels_of(measured: Measured, values: np.ndarray) -> tuple[np.ndarray, list[str]]:
+    """Choose round values, or round dates, for the lines, and how they are written."""
+    if measured.is_date:
+        levels = date_levels(float(values.min()), float(values.max()), _LINES)
+        return levels, Dates().texts(levels)
+    levels = round_levels(*range_that_matters(values), _LINES)
+    return levels, Numbers(float(levels[1] - levels[0])).texts(levels)
 
 
 def _label_longest(panel: Panel, sheet: Axes, text: str, pieces: Sequence[np.ndarray], room: Room) -> None:

@@ -12,7 +12,7 @@ from matplotlib.axis import Axis
 from matplotlib.figure import Figure
 
 from porkgrid.figures.dates import cell_edges, dates_from_days, days_from_dates, iso_day
-from porkgrid.figures.levels import Scale, round_step, value_text
+from porkgrid.figures.levels import Scale
 from porkgrid.figures.marks import add_line, add_rectangle
 from porkgrid.figures.panel import Panel, mark_departure_dates
 from porkgrid.figures.placement import Box
@@ -21,6 +21,7 @@ from porkgrid.figures.text import put, width_in
 
 WINDOW_INK = "#2b59c3"
 _LANE_IN = 0.07  # thickness of a window's bar
+_MARGIN = 0.03  # of a strip's range, beside its extreme values
 _LEAST_BAR_IN = 0.03  # so that a window of one day in fifteen years can be seen
 
 
@@ -75,9 +76,11 @@ def draw_departure_strip(
     axes = axes_at(figure, box.left, box.bottom, box.right - box.left, box.top - box.bottom)
     axes.set_xlim(*panel.x_days)
     mark_departure_dates(panel, axes, bare=False)
-    _mark_values(axes.yaxis, scale)
-    if scale is not None:
-        axes.set_ylim(scale.levels[0], scale.levels[-1])
+    if scale is None:
+        axes.set_yticks([])
+    else:
+        axes.set_ylim(_reach(best, scale))
+        _mark_values(axes.yaxis, scale)
         add_line(axes, *_steps(dates, best), color=INK, linewidth=1.2)
 
     windows = open_windows(dates, best)
@@ -103,9 +106,11 @@ def draw_arrival_strip(
     axes = axes_at(figure, box.left, box.bottom, box.right - box.left, box.top - box.bottom)
     axes.set_ylim(*panel.y_days)
     axes.set_yticks(panel.y_ticks, [""] * len(panel.y_ticks))
-    _mark_values(axes.xaxis, scale)
-    if scale is not None:
-        axes.set_xlim(scale.levels[0], scale.levels[-1])
+    if scale is None:
+        axes.set_xticks([])
+    else:
+        axes.set_xlim(_reach(best, scale))
+        _mark_values(axes.xaxis, scale)
         days, values = _steps(dates, best)
         add_line(axes, values, days, color=INK, linewidth=1.2)
 
@@ -125,15 +130,19 @@ def _steps(dates: np.ndarray, best: np.ndarray) -> tuple[np.ndarray, np.ndarray]
     return np.repeat(cell_edges(days_from_dates(dates)), 2)[1:-1], np.repeat(best, 2)
 
 
-def _mark_values(axis: Axis, scale: Scale | None) -> None:
-    """Put two to four round values on a short axis, with faint lines across."""
-    if scale is None:
-        axis.set_ticks([])
-        return
+def _reach(best: np.ndarray, scale: Scale) -> tuple[float, float]:
+    """Return the range of a strip: that of the colours, and on as far as any day's best value lies."""
     low, high = float(scale.levels[0]), float(scale.levels[-1])
-    step = round_step(high - low, 3)
-    ticks = np.arange(np.ceil(low / step - 1e-6), np.floor(high / step + 1e-6) + 0.5) * step
-    axis.set_ticks(ticks, labels=[value_text(float(tick), step) for tick in ticks])
+    known = best[np.isfinite(best)]
+    least, most = float(known.min(initial=high)), float(known.max(initial=low))
+    margin = _MARGIN * (max(most, high) - min(least, low))
+    return low if least >= low else least - margin, high if most <= high else most + margin
+
+
+def _mark_values(axis: Axis, scale: Scale) -> None:
+    """Put two to four round values on a short axis, with faint lines across."""
+    ticks, labels = scale.writing.ticks(*axis.get_view_interval(), 3)
+    axis.set_ticks(ticks, labels=labels)
     axis.axes.grid(True, color=FAINT_INK, linewidth=0.35, alpha=0.6)
 
 

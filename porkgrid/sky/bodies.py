@@ -108,6 +108,18 @@ def find_body(name_or_id: str | int, extra: Mapping[str, Body]) -> Body:
     raise LookupError(f"no body {str(name_or_id)!r}; {_suggestion(wanted, known)}")
 
 
+def gm_of(body: Body) -> float:
+    """GM of a body that must have one, km³/s²; admit.load_scenario refuses the others."""
+    assert body.gm_km3_s2 is not None
+    return body.gm_km3_s2
+
+
+def radius_of(body: Body) -> float:
+    """Equatorial radius of a body that must have one, km; admit.load_scenario refuses the others."""
+    assert body.radius_km is not None
+    return body.radius_km
+
+
 def pole_axes(body: Body, jd: ArrayLike) -> NDArray[np.float64]:
     """Return the body's equator axes at TDB Julian dates (...) as matrices (..., 3, 3) on ICRF vectors.
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import dataclass
 from pathlib import Path
 
 import numpy as np
@@ -9,59 +10,80 @@ import pandas as pd
 import xarray as xr
 
 from porkgrid.errors import RequestError
-from porkgrid.sky.bodies import find_body
 from porkgrid.sky.epochs import iso_from_jd
-from porkgrid.sky.states import StateTable, state_table
+from porkgrid.sky.states import state_table
+from porkgrid.survey.legs import LegOption
 from porkgrid.survey.plan import Plan
 from porkgrid.survey.rank import distinct, local_bests
-from porkgrid.survey.routes import fly_between
+from porkgrid.survey.routes import cells_at
 from porkgrid.survey.store import BLOCKED_BY, STORE
 from porkgrid.survey.surveys import Survey
 
 
-def pick(folder: Path, plan: Plan, by: str, sign: float, keep: int, apart_days: float) -> np.ndarray:
-    """Epochs (k, 2) of the distinct local bests of a stored measure, best first, TDB Julian dates."""
-    departure, arrival = plan.tables[0].jd, plan.tables[-1].jd
-    grid = xr.open_zarr(folder / STORE, chunks=None)[[by, BLOCKED_BY]]
+@dataclass(frozen=True)
+class Picked:
+    """A candidate: its epochs, TDB Julian dates of all encounters, and how each leg is flown."""
+
+    epochs: tuple[float, ...]
+    options: tuple[LegOption, ...]
+
+
+def pick(folder: Path, plan: Plan, by: str, sign: float, keep: int, apart_days: float) -> list[Picked]:
+    """The distinct local bests of a stored measure, best first."""
+    grid = xr.open_zarr(folder / STORE, chunks=None)
 
     def read(rows: slice) -> tuple[np.ndarray, np.ndarray]:
-        band = grid.isel(departure=rows)
+        band = grid[[by, BLOCKED_BY]].isel(departure=rows)
         values = band[by].broadcast_like(band[BLOCKED_BY]).transpose("departure", "arrival")
         return values.values, band[BLOCKED_BY].values
 
-    i, j, _ = local_bests(read, len(departure), sign)
-    epochs = np.column_stack([departure[i], arrival[j]])
-    return epochs[list(distinct(epochs, apart_days, keep))]
+    i, j, _ = local_bests(read, len(plan.tables[0].jd), sign)
+    at = {"departure": xr.DataArray(i, dims="cell"), "arrival": xr.DataArray(j, dims="cell")}
+    cells = grid[[name for name in plan.stored if _makes_a_candidate(name)]].isel(at).load()
+    epochs = np.column_stack([cells[name].values for name in epoch_names(plan)])
+    return [
+        Picked(tuple(map(float, epochs[row])), _options(plan, cells, row))
+        for row in distinct(epochs, apart_days, keep)
+    ]
 
 
-def tabulate(plan: Plan, epochs: np.ndarray) -> pd.DataFrame:
-    """Table of candidates: rank, ISO dates, then every measure of the route. `epochs` (k, 2) as of `pick`."""
+def epoch_names(plan: Plan) -> list[str]:
+    """The measures that hold the epochs of a route's encounters, in flying order."""
+    stops = ["departure", *(f"flyby{n}" for n in range(1, plan.flybys + 1)), "arrival"]
+    return [f"{stop}_epoch_jd_tdb" for stop in stops]
+
+
+def tabulate(plan: Plan, picked: list[Picked]) -> pd.DataFrame:
+    """Table of candidates: rank, ISO dates of all encounters, then every measure of the route."""
+    stops = [name.removesuffix("_epoch_jd_tdb") for name in epoch_names(plan)]
     rows = []
-    for number, (departure, arrival) in enumerate(epochs, start=1):
-        row: dict[str, object] = {
-            "rank": number,
-            "departure": iso_from_jd(departure),
-            "arrival": iso_from_jd(arrival),
-        }
-        rows.append(row | measure_at(plan, departure, arrival))
-    columns = ["rank", "departure", "arrival", *plan.measures]
-    return pd.DataFrame(rows, columns=columns)
+    for number, one in enumerate(picked, start=1):
+        dates = dict(zip(stops, map(iso_from_jd, one.epochs), strict=True))
+        rows.append({"rank": number} | dates | measures_at(plan, one))
+    return pd.DataFrame(rows, columns=["rank", *stops, *plan.measures])
 
 
-def measure_at(plan: Plan, departure_jd: float, arrival_jd: float) -> dict[str, float]:
-    """Every measure of the route between two epochs, which need not be on the grid."""
-    ends = [_state_at(plan, encounter, jd) for encounter, jd in ((0, departure_jd), (-1, arrival_jd))]
-    earth = _earth_at(plan, ends[1].jd)
-    cells, _ = fly_between(plan, ends[0], ends[1], earth)
+def measures_at(plan: Plan, one: Picked) -> dict[str, float]:
+    """Every measure of a route flown at epochs that need not be on the grid."""
+    tables = [
+        state_table(plan.ephemeris, table.body, np.array([jd]))
+        for table, jd in zip(plan.tables, one.epochs, strict=True)
+    ]
+    cells = cells_at(plan, tables, list(one.options))
     return {name: float(np.ravel(measure.compute(cells))[0]) for name, measure in plan.measures.items()}
 
 
-def _state_at(plan: Plan, encounter: int, jd: float) -> StateTable:
-    return state_table(plan.ephemeris, plan.tables[encounter].body, np.array([jd]))
+def _makes_a_candidate(name: str) -> bool:
+    return name.endswith(("_epoch_jd_tdb", "_revs", "_branch"))
 
 
-def _earth_at(plan: Plan, jd: np.ndarray) -> np.ndarray:
-    return plan.ephemeris.states(find_body("earth", {}), jd)[0]
+def _options(plan: Plan, cells: xr.Dataset, row: int) -> tuple[LegOption, ...]:
+    """The leg options whose revolutions and branch the store gives for a cell."""
+    kept = []
+    for n, options in enumerate(plan.options, start=1):
+        flown = (int(cells[f"leg{n}_revs"][row]), int(cells[f"leg{n}_branch"][row]))
+        kept.append(next(option for option in options if (option.revs, option.branch) == flown))
+    return tuple(kept)
 
 
 def rank_anew(

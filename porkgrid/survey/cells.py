@@ -6,12 +6,12 @@ Legs hold the options that were kept for the cell; a direct flight is a route of
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from functools import cached_property
 
 import numpy as np
 
-from porkgrid.sky.bodies import pole_axes
+from porkgrid.sky.bodies import Body, gm_of, pole_axes
 from porkgrid.sky.states import StateTable
 from porkgrid.survey.legs import LegCells
 
@@ -26,6 +26,23 @@ class ApsisOrbit:
 
 
 @dataclass
+class FlybyCells:
+    """One flyby in every cell: the body passed, and what joins the leg in to the leg out."""
+
+    body: Body
+    v_in: np.ndarray  # (3, n, m) km/s, relative to the body
+    v_out: np.ndarray
+    body_velocity: np.ndarray  # (3, n, m) km/s, heliocentric
+
+    @cached_property
+    def periapsis_km(self) -> np.ndarray:
+        """(n, m) radius of the one periapsis that turns v_in into v_out."""
+        from porkgrid.physics.flyby import periapsis_radius
+
+        return periapsis_radius(self.v_in, self.v_out, gm_of(self.body))
+
+
+@dataclass
 class Cells:
     """The legs of a grid with the tables of the bodies at its two ends."""
 
@@ -35,6 +52,7 @@ class Cells:
     legs: list[LegCells]
     parking: ApsisOrbit | None = None
     capture: ApsisOrbit | None = None
+    flybys: list[FlybyCells] = field(default_factory=list)
 
     @cached_property
     def departure_axes(self) -> np.ndarray:

@@ -51,6 +51,7 @@ class LegCells:
     r2: np.ndarray  # km, of the body reached
     body_velocity1: np.ndarray  # km/s, heliocentric
     body_velocity2: np.ndarray
+    jd2: np.ndarray  # TDB Julian date of reaching it, broadcasts to (n, m)
     tof_days: np.ndarray  # (n, m)
     v_inf_out: np.ndarray  # (3, n, m) km/s, relative to the body left
     v_inf_in: np.ndarray  # (3, n, m) km/s, relative to the body reached
@@ -86,6 +87,7 @@ def solve_leg(departure: StateTable, arrival: StateTable, option: LegOption) -> 
         r2=arrival.position[:, None, :],
         body_velocity1=departure.velocity[:, :, None],
         body_velocity2=arrival.velocity[:, None, :],
+        jd2=arrival.jd[None, :],
         tof_days=arrival.jd[None, :] - departure.jd[:, None],
         v_inf_out=v_out,
         v_inf_in=v_in,

@@ -21,7 +21,7 @@ REASONS = {
     "plane_undefined": "transfer plane undefined (0° or 180°)",
     "no_transfer": "no such transfer",
 }
-_REASON_OF_STATUS = {NOT_AFTER: 0, NO_PLANE: 1, NO_TRANSFER: 2, BAD_INPUT: 2}
+REASON_OF_STATUS = {NOT_AFTER: 0, NO_PLANE: 1, NO_TRANSFER: 2, BAD_INPUT: 2}
 
 
 @dataclass(frozen=True)
@@ -82,7 +82,7 @@ def blocked_by(cells: Cells, bounds: tuple[Bound, ...]) -> np.ndarray:
     """
     status = cells.status
     word = np.zeros(status.shape, dtype=np.uint32)
-    for code, bit in _REASON_OF_STATUS.items():
+    for code, bit in REASON_OF_STATUS.items():
         word |= np.where(status == code, np.uint32(1 << bit), np.uint32(0))
     flown = word == 0
     for bit, bound in enumerate(bounds, start=len(REASONS)):

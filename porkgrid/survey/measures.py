@@ -15,10 +15,15 @@ import numpy as np
 
 from porkgrid.physics import burns
 from porkgrid.physics.constants import AU_KM
+from porkgrid.sky.bodies import gm_of, radius_of
 
 if TYPE_CHECKING:
     from porkgrid.sky.bodies import Body
-    from porkgrid.survey.cells import Cells
+    from porkgrid.survey.cells import Cells, FlybyCells
+
+# What a measure is a function of, which tells a search for flybys where to apply a limit or a cost to it.
+DEPARTURE, ARRIVAL, LEG = "first leg", "last leg", "leg n"
+FLYBY, EVERY_LEG, SUM, ENDS = "flyby n", "every leg", "sum over the route", "first and last date"
 
 BOTH, BY_DEPARTURE, BY_ARRIVAL = ("departure", "arrival"), ("departure",), ("arrival",)
 
@@ -45,6 +50,8 @@ class Measure:
     compute: Callable[..., np.ndarray]
     dims: tuple[str, ...] = BOTH
     needs: tuple[str, ...] = ()
+    scope: str = ENDS
+    number: int = 0  # of the leg or flyby
 
     @property
     def label(self) -> str:
@@ -73,7 +80,30 @@ def _capture(cells: Cells) -> np.ndarray:
 
 def _total(cells: Cells) -> np.ndarray:
     total = _departure(cells)
+    for flyby in cells.flybys:
+        total = total + _flyby_burn(flyby)
     return total if cells.capture is None else total + _capture(cells)
+
+
+def _flyby_burn(flyby: FlybyCells) -> np.ndarray:
+    from porkgrid.physics.flyby import burn
+
+    return burn(flyby.v_in, flyby.v_out, gm_of(flyby.body))
+
+
+def _flyby_altitude(flyby: FlybyCells) -> np.ndarray:
+    return flyby.periapsis_km - radius_of(flyby.body)
+
+
+def _flyby_turn(flyby: FlybyCells) -> np.ndarray:
+    from porkgrid.physics.flyby import turn_angle
+
+    return np.degrees(turn_angle(flyby.v_in, flyby.v_out))
+
+
+def _flyby_gain(flyby: FlybyCells) -> np.ndarray:
+    before = np.linalg.norm(flyby.v_in + flyby.body_velocity, axis=0)
+    return np.linalg.norm(flyby.v_out + flyby.body_velocity, axis=0) - before
 
 
 def _entry_speed(cells: Cells) -> np.ndarray:
@@ -145,29 +175,31 @@ _ENTRIES = [
             lambda c: c.departure.jd[:, None], BY_DEPARTURE),
     Measure("arrival_epoch_jd_tdb", "days", "arrival (JD TDB)", "arrival epoch, TDB Julian date",
             lambda c: c.arrival.jd, BY_ARRIVAL),
-    Measure("c3_km2_s2", "km²/s²", "$C_3$", "departure energy: the excess speed squared", lambda c: c.c3),
+    Measure("c3_km2_s2", "km²/s²", "$C_3$", "departure energy: the excess speed squared", lambda c: c.c3,
+            scope=DEPARTURE),
     Measure("v_inf_departure_km_s", "km/s", r"departure $v_\infty$", "departure excess speed",
-            lambda c: c.v_inf_departure),
+            lambda c: c.v_inf_departure, scope=DEPARTURE),
     Measure("dla_deg", "deg", "DLA", "declination of the launch asymptote "
             "(ICRF axes at Earth, else to the body's pole)",
-            lambda c: np.degrees(c.departure_declination_rad), needs=("departure pole",)),
+            lambda c: np.degrees(c.departure_declination_rad), needs=("departure pole",), scope=DEPARTURE),
     Measure("rla_deg", "deg", "RLA", "right ascension of the launch asymptote, 0 to 360 (ICRF axes at Earth, "
             "else from the node of the body's equator on the ICRF equator)",
-            _right_ascension, needs=("departure pole",)),
+            _right_ascension, needs=("departure pole",), scope=DEPARTURE),
     Measure("dv_departure_km_s", "km/s", r"departure $\Delta v$", "burn from the parking orbit's periapsis, "
             "with the plane change that the asymptote's declination asks of the orbit's inclination",
-            _departure, needs=("parking",)),
+            _departure, needs=("parking",), scope=DEPARTURE),
     Measure("v_inf_arrival_km_s", "km/s", r"arrival $v_\infty$", "arrival excess speed",
-            lambda c: c.v_inf_arrival),
+            lambda c: c.v_inf_arrival, scope=ARRIVAL),
     Measure("dv_capture_km_s", "km/s", r"capture $\Delta v$", "burn at the capture orbit's periapsis",
-            _capture, needs=("capture",)),
+            _capture, needs=("capture",), scope=ARRIVAL),
     Measure("entry_speed_km_s", "km/s", "entry speed", "inertial speed at the entry interface altitude",
-            _entry_speed, needs=("entry",)),
+            _entry_speed, needs=("entry",), scope=ARRIVAL),
     Measure("arrival_declination_deg", "deg", "arrival declination",
             "declination of the incoming velocity asymptote to the arrival body's equator",
-            _arrival_declination, needs=("arrival pole",)),
+            _arrival_declination, needs=("arrival pole",), scope=ARRIVAL),
     Measure("arrival_phase_deg", "deg", "arrival phase angle",
-            "angle at the arrival body between the incoming velocity asymptote and the Sun", _arrival_phase),
+            "angle at the arrival body between the incoming velocity asymptote and the Sun", _arrival_phase,
+            scope=ARRIVAL),
     Measure("arrival_sun_distance_au", "au", "Sun distance at arrival", "distance from the Sun at arrival",
             _sun_distance, BY_ARRIVAL),
     Measure("arrival_earth_distance_au", "au", "Earth distance at arrival", "distance from Earth at arrival",
@@ -180,34 +212,52 @@ _ENTRIES = [
             _mars_season, BY_ARRIVAL, ("mars arrival",)),
     Measure("tof_days", "days", "flight time", "time of flight from departure to arrival", _tof),
     Measure("dv_total_km_s", "km/s", r"total $\Delta v$", "sum of all burns that the route makes",
-            _total, needs=("parking",)),
-    Measure("sun_min_au", "au", "least Sun distance", "least distance from the Sun on the way", _nearest_sun),
+            _total, needs=("parking",), scope=SUM),
+    Measure("sun_min_au", "au", "least Sun distance", "least distance from the Sun on the way", _nearest_sun,
+            scope=EVERY_LEG),
     Measure("sun_max_au", "au", "greatest Sun distance", "greatest distance from the Sun on the way",
-            _farthest_sun),
+            _farthest_sun, scope=EVERY_LEG),
 ]  # fmt: skip
 
 _LEG_ENTRIES = [
     Measure("leg{n}_tof_days", "days", "leg {n} flight time", "time of flight of leg {n}",
-            lambda c, n: c.legs[n - 1].tof_days),
+            lambda c, n: c.legs[n - 1].tof_days, scope=LEG),
     Measure("leg{n}_transfer_angle_deg", "deg", "leg {n} transfer angle",
             "angle swept about the Sun on leg {n}, whole revolutions left out",
-            lambda c, n: np.degrees(c.legs[n - 1].transfer_angle_rad)),
+            lambda c, n: np.degrees(c.legs[n - 1].transfer_angle_rad), scope=LEG),
     Measure("leg{n}_revs", "1", "leg {n} revolutions", "whole revolutions about the Sun on leg {n}",
-            lambda c, n: c.legs[n - 1].revs),
+            lambda c, n: c.legs[n - 1].revs, scope=LEG),
     Measure("leg{n}_branch", "1", "leg {n} branch",
             "which solution with revolutions: −1 left (longer period), +1 right, 0 no revolutions",
-            lambda c, n: c.legs[n - 1].branch),
+            lambda c, n: c.legs[n - 1].branch, scope=LEG),
     Measure("leg{n}_sun_min_au", "au", "leg {n} least Sun distance", "least on the arc that leg {n} flies",
-            lambda c, n: c.legs[n - 1].sun_range_km[0] / AU_KM),
+            lambda c, n: c.legs[n - 1].sun_range_km[0] / AU_KM, scope=LEG),
     Measure("leg{n}_sun_max_au", "au", "leg {n} greatest Sun distance",
             "greatest on the arc that leg {n} flies",
-            lambda c, n: c.legs[n - 1].sun_range_km[1] / AU_KM),
+            lambda c, n: c.legs[n - 1].sun_range_km[1] / AU_KM, scope=LEG),
+]  # fmt: skip
+
+_FLYBY_ENTRIES = [
+    Measure("flyby{n}_epoch_jd_tdb", "days", "flyby {n} (JD TDB)", "epoch of flyby {n}, TDB Julian date",
+            lambda c, n: c.legs[n - 1].jd2, scope=LEG),
+    Measure("flyby{n}_v_inf_km_s", "km/s", r"flyby {n} $v_\infty$", "excess speed before flyby {n}",
+            lambda c, n: np.linalg.norm(c.legs[n - 1].v_inf_in, axis=0), scope=LEG),
+    Measure("flyby{n}_turn_deg", "deg", "flyby {n} turn angle",
+            "angle by which flyby {n} turns the excess velocity",
+            lambda c, n: _flyby_turn(c.flybys[n - 1]), scope=FLYBY),
+    Measure("flyby{n}_altitude_km", "km", "flyby {n} altitude", "altitude of the periapsis of flyby {n}",
+            lambda c, n: _flyby_altitude(c.flybys[n - 1]), scope=FLYBY),
+    Measure("flyby{n}_burn_km_s", "km/s", "flyby {n} burn",
+            "burn at the periapsis of flyby {n}, along the velocity",
+            lambda c, n: _flyby_burn(c.flybys[n - 1]), scope=FLYBY),
+    Measure("flyby{n}_gain_km_s", "km/s", "flyby {n} gain", "change of heliocentric speed by flyby {n}",
+            lambda c, n: _flyby_gain(c.flybys[n - 1]), scope=FLYBY),
 ]  # fmt: skip
 
 
 def all_entries() -> list[Measure]:
     """Every entry of the registry, names with `{n}` unexpanded."""
-    return [*_ENTRIES, *_LEG_ENTRIES]
+    return [*_ENTRIES, *_LEG_ENTRIES, *_FLYBY_ENTRIES]
 
 
 def features_of(bodies: Iterable[Body], parking: bool, capture: bool) -> frozenset[str]:
@@ -227,7 +277,11 @@ def features_of(bodies: Iterable[Body], parking: bool, capture: bool) -> frozens
 
 def measures_for(legs: int, features: Set[str]) -> dict[str, Measure]:
     """The measures that a route of so many legs with these features has, by name."""
-    expanded = _ENTRIES + [_numbered(entry, n + 1) for n in range(legs) for entry in _LEG_ENTRIES]
+    expanded = [
+        *_ENTRIES,
+        *(_numbered(entry, n) for n in range(1, legs + 1) for entry in _LEG_ENTRIES),
+        *(_numbered(entry, n) for n in range(1, legs) for entry in _FLYBY_ENTRIES),
+    ]
     return {entry.name: entry for entry in expanded if set(entry.needs) <= features}
 
 
@@ -256,7 +310,8 @@ def _numbered(entry: Measure, n: int) -> Measure:
     return replace(
         entry,
         name=entry.name.format(n=n),
-        symbol=entry.symbol.format(n=n),
+        symbol=entry.symbol.replace("{n}", str(n)),
         meaning=entry.meaning.format(n=n),
+        number=n,
         compute=lambda cells: compute(cells, n),
     )

@@ -8,15 +8,16 @@ from functools import cached_property
 
 import numpy as np
 
-from porkgrid.errors import RequestError
 from porkgrid.scenario import Orbit, Parking, Scenario
 from porkgrid.sky.bodies import Body, find_body
 from porkgrid.sky.kernel import Ephemeris, open_ephemeris
 from porkgrid.sky.states import StateTable, state_table
 from porkgrid.survey.cells import ApsisOrbit
+from porkgrid.survey.chains import Search, prepare
+from porkgrid.survey.flybylimits import refuse_unsearchable, with_flyby_bounds
 from porkgrid.survey.legs import LegOption, leg_options
 from porkgrid.survey.limits import Bound, bounds_of
-from porkgrid.survey.measures import Measure, default_rank, features_of, measures_for
+from porkgrid.survey.measures import ENDS, Measure, default_rank, features_of, measures_for
 
 # A tile is a chunk of the store: 2^17 cells keep a tile's arrays at a megabyte each.
 TILE_COLUMNS = 1024
@@ -53,6 +54,8 @@ class Plan:
     bounds: tuple[Bound, ...]
     rank_by: str
     rank_sign: float  # +1: less is better; −1: more is better
+    objective: Measure  # what a search for flyby dates makes least, with its own sign
+    objective_sign: float
 
     @property
     def shape(self) -> tuple[int, int]:
@@ -63,13 +66,23 @@ class Plan:
     def chunks(self) -> tuple[int, int]:
         """Rows and columns of a whole tile."""
         n, m = self.shape
-        columns = min(m, TILE_COLUMNS)
+        columns = m if self.flybys else min(m, TILE_COLUMNS)  # a search reaches all arrivals at once
         return min(n, max(1, TILE_CELLS // columns)), columns
 
     @cached_property
     def tiles(self) -> tuple[Tile, ...]:
         """The tiles in order of number; the same for every machine and every number of workers."""
         return tuple(Tile(number, *block) for number, block in enumerate(_blocks(self.shape, self.chunks)))
+
+    @property
+    def flybys(self) -> int:
+        """How many flybys the route has."""
+        return len(self.options) - 1
+
+    @cached_property
+    def search(self) -> Search:
+        """What the search for flyby dates shares among tiles."""
+        return prepare(self)
 
     @property
     def route(self) -> str:
@@ -81,12 +94,7 @@ class Plan:
 
 
 def make_plan(scenario: Scenario) -> Plan:
-    """Look up what a sweep of the scenario needs. RequestError for a flyby or states that no kernel has."""
-    if len(scenario.encounters) > 2:
-        raise RequestError(
-            f"{scenario.path}: encounter 2, flyby: routes with flybys cannot be swept yet; "
-            "give the departure and the arrival only"
-        )
+    """Look up what a sweep of the scenario needs. RequestError where it cannot be done."""
     ephemeris = open_ephemeris(scenario.kernels)
     extra = scenario.own_bodies
     bodies = [find_body(encounter.body, extra) for encounter in scenario.encounters]
@@ -98,8 +106,10 @@ def make_plan(scenario: Scenario) -> Plan:
     features = features_of(bodies, first.parking is not None, last.capture is not None)
     measures = measures_for(len(scenario.legs), features)
     rank_by = scenario.rank.by or default_rank(features)
+    sign = 1.0 if scenario.rank.order == "least" else -1.0
+    objective, objective_sign = _objective(measures, rank_by, sign)
     earth, _ = ephemeris.states(find_body("earth", {}), tables[-1].jd)
-    return Plan(
+    plan = Plan(
         scenario=scenario,
         ephemeris=ephemeris,
         tables=tables,
@@ -109,17 +119,31 @@ def make_plan(scenario: Scenario) -> Plan:
         capture=_apsides(last.capture, bodies[-1]),
         measures=measures,
         stored=_stored(scenario, measures, rank_by),
-        bounds=bounds_of(scenario.limits, measures),
+        bounds=with_flyby_bounds(bounds_of(scenario.limits, measures), scenario, bodies, measures),
         rank_by=rank_by,
-        rank_sign=1.0 if scenario.rank.order == "least" else -1.0,
+        rank_sign=sign,
+        objective=objective,
+        objective_sign=objective_sign,
     )
+    if plan.flybys:
+        refuse_unsearchable(plan)
+    return plan
+
+
+def _objective(measures: dict[str, Measure], rank_by: str, sign: float) -> tuple[Measure, float]:
+    """What to search flyby dates by: the ranked measure, or the total Δv where dates alone decide the rank."""
+    if measures[rank_by].scope == ENDS and "dv_total_km_s" in measures:
+        return measures["dv_total_km_s"], 1.0
+    return measures[rank_by], sign
 
 
 def _stored(scenario: Scenario, measures: dict[str, Measure], rank_by: str) -> tuple[str, ...]:
     """The measures to keep: those asked for, and always the epochs, the limited and the ranked."""
     if scenario.measures is None:
         return tuple(measures)
-    wanted = {*scenario.measures, *scenario.limits, rank_by, "departure_epoch_jd_tdb", "arrival_epoch_jd_tdb"}
+    wanted = {*scenario.measures, *scenario.limits, rank_by}
+    # what a candidate is made of
+    wanted |= {name for name in measures if name.endswith(("_epoch_jd_tdb", "_revs", "_branch"))}
     return tuple(name for name in measures if name in wanted)
 
 

@@ -3,12 +3,15 @@
 from __future__ import annotations
 
 from dataclasses import replace
+from itertools import pairwise
 
 import numpy as np
 
 from porkgrid.physics.lambert import FLOWN
+from porkgrid.sky.bodies import find_body
 from porkgrid.sky.states import StateTable
-from porkgrid.survey.cells import Cells
+from porkgrid.survey.cells import Cells, FlybyCells
+from porkgrid.survey.flybyroutes import flyby_cells
 from porkgrid.survey.legs import LegCells, LegOption, solve_leg
 from porkgrid.survey.limits import blocked_by
 from porkgrid.survey.plan import Plan
@@ -17,6 +20,8 @@ from porkgrid.survey.plan import Plan
 def route_cells(plan: Plan, rows: slice, columns: slice) -> tuple[Cells, np.ndarray]:
     """The cells of a block of the plan's grid, and what forbids each of them."""
     departure, arrival = _cut(plan.tables[0], rows), _cut(plan.tables[-1], columns)
+    if plan.flybys:
+        return flyby_cells(plan, plan.search, departure)
     return fly_between(plan, departure, arrival, plan.earth_at_arrival[:, columns])
 
 
@@ -43,6 +48,17 @@ def fly_between(
         best_rank = np.where(better, rank, best_rank)
     assert best is not None
     return best, best_blocked
+
+
+def cells_at(plan: Plan, tables: list[StateTable], options: list[LegOption]) -> Cells:
+    """The one cell of a route whose encounters have one date each and whose legs are flown as told."""
+    legs = [solve_leg(*pair, option) for pair, option in zip(pairwise(tables), options, strict=True)]
+    flybys = [
+        FlybyCells(table.body, before.v_inf_in, after.v_inf_out, after.body_velocity1)
+        for table, (before, after) in zip(tables[1:-1], pairwise(legs), strict=True)
+    ]
+    earth, _ = plan.ephemeris.states(find_body("earth", {}), tables[-1].jd)
+    return Cells(tables[0], tables[-1], earth, legs, plan.parking, plan.capture, flybys)
 
 
 def _cells_of(

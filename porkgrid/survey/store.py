@@ -40,7 +40,7 @@ def create_store(folder: Path, plan: Plan, version: str) -> None:
         for name in plan.stored:
             measure = plan.measures[name]
             if measure.dims == BOTH:
-                _new_array(group, name, plan, np.float32, np.nan, _attributes(measure))
+                _new_array(group, name, plan, stored_type(measure), np.nan, _attributes(measure))
         _new_array(group, BLOCKED_BY, plan, np.uint32, 0xFFFFFFFF, _flags(plan))
         zarr.consolidate_metadata(path)
 
@@ -49,6 +49,11 @@ def open_arrays(folder: Path) -> dict[str, zarr.Array]:
     """The arrays of a store that tiles are written to, by name."""
     group = zarr.open_group(folder / STORE, mode="r+")
     return {name: array for name, array in group.arrays() if array.ndim == 2}
+
+
+def stored_type(measure: Measure) -> type:
+    """Four bytes for numbers that are estimates to four digits, eight for epochs."""
+    return np.float64 if measure.name.endswith("_epoch_jd_tdb") else np.float32
 
 
 def write_tile(arrays: Mapping[str, zarr.Array], tile: Tile, values: Mapping[str, np.ndarray]) -> None:

@@ -94,6 +94,8 @@ def _begin(folder: Path, plan: Plan) -> dict[str, Any]:
 def _fill(folder: Path, plan: Plan, workers: int, report: Callable[[Progress], None] | None) -> None:
     """Compute and write the tiles that are missing, on a pool of threads."""
     arrays = open_arrays(folder)
+    if plan.flybys:
+        _ = plan.search  # made once, before the threads share it
     entries = read_ledger(folder)
     missing = [tile for tile in plan.tiles if tile.number not in entries]
     stop = threading.Event()
@@ -137,8 +139,7 @@ def _progress(plan: Plan, entries: dict[int, TileSums]) -> Progress:
 def _finish(folder: Path, plan: Plan, provenance: dict[str, Any]) -> None:
     """Rank, and write the totals: the survey is complete when this returns."""
     rank = plan.scenario.rank
-    epochs = pick(folder, plan, plan.rank_by, plan.rank_sign, rank.keep, rank.apart_days)
-    table = tabulate(plan, epochs)
+    table = tabulate(plan, pick(folder, plan, plan.rank_by, plan.rank_sign, rank.keep, rank.apart_days))
     folders.write_whole(folder / folders.CANDIDATES, table.to_csv(index=False, float_format="%.13g"))
     sums = totals(read_ledger(folder).values(), plan.rank_sign)
     if provenance["state"] == folders.COMPLETE:

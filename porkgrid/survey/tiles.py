@@ -10,7 +10,7 @@ from porkgrid.survey.limits import flag_names
 from porkgrid.survey.measures import BOTH
 from porkgrid.survey.plan import Plan, Tile
 from porkgrid.survey.routes import route_cells
-from porkgrid.survey.store import BLOCKED_BY
+from porkgrid.survey.store import BLOCKED_BY, stored_type
 
 
 @dataclass(frozen=True)
@@ -32,7 +32,7 @@ def compute_tile(plan: Plan, tile: Tile) -> tuple[dict[str, np.ndarray], TileSum
     for name in plan.stored:
         measure = plan.measures[name]
         if measure.dims == BOTH:
-            values[name] = np.broadcast_to(measure.compute(cells), blocked.shape).astype(np.float32)
+            values[name] = np.broadcast_to(measure.compute(cells), blocked.shape).astype(stored_type(measure))
     rank = np.broadcast_to(plan.measures[plan.rank_by].compute(cells), blocked.shape)
     return values, _sums(plan, tile, blocked, rank)
 

@@ -61,18 +61,18 @@ def petrel_cells(petrel) -> Cells:
 
 @pytest.fixture
 def small_tiles(monkeypatch) -> None:
-    """Tiles of 8 × 16 cells: many even in a small grid."""
+    """Tiles of 8 × 32 cells: many even in a small grid."""
     _shrink_tiles(monkeypatch)
 
 
 def _shrink_tiles(patch: pytest.MonkeyPatch) -> None:
-    patch.setattr(plans, "TILE_COLUMNS", 16)
-    patch.setattr(plans, "TILE_CELLS", 128)
+    patch.setattr(plans, "TILE_COLUMNS", 32)
+    patch.setattr(plans, "TILE_CELLS", 256)
 
 
 @pytest.fixture(scope="session")
 def survey(scenario_of, tmp_path_factory) -> Survey:
-    """ROOK, swept in 24 tiles. Do not write to it."""
+    """ROOK, swept in 12 tiles. Do not write to it."""
     with pytest.MonkeyPatch.context() as patch:
         _shrink_tiles(patch)
         swept = sweep(scenario_of(ROOK), tmp_path_factory.mktemp("survey") / "rook", workers=2)

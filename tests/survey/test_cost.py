@@ -22,10 +22,10 @@ def test_cells_and_solves_are_counted(rook, loops):
 
 def test_there_are_no_more_workers_than_cores_or_tiles(rook, small_tiles, plan_of):
     plan = plan_of(ROOK)
-    assert predict(plan).tiles == 24
-    assert predict(plan).workers == min(os.cpu_count(), 24)
+    assert predict(plan).tiles == 12
+    assert predict(plan).workers == min(os.cpu_count(), 12)
     assert predict(plan, workers=7).workers == 7
-    assert predict(plan, workers=50).workers == 24
+    assert predict(plan, workers=50).workers == 12
 
 
 def test_the_disk_is_that_which_the_store_takes(rook, survey, small_tiles):

@@ -69,14 +69,14 @@ def test_the_grid_says_what_it_is(grid):
 
 def test_every_tile_is_one_chunk(survey):
     array = zarr.open_group(survey.path / STORE, mode="r")["c3_km2_s2"]
-    assert array.chunks == (8, 16)
+    assert array.chunks == (8, 32)
     chunks = [path for path in (survey.path / STORE / "c3_km2_s2" / "c").rglob("*") if path.is_file()]
-    assert len(chunks) == 24
+    assert len(chunks) == 12
 
 
 def test_tiles_that_are_not_written_are_no_numbers_and_not_allowed(rook, small_tiles, tmp_path):
     create_store(tmp_path, rook, "0")
-    tile = Tile(9, slice(16, 24), slice(16, 32))
+    tile = Tile(9, slice(16, 24), slice(32, 59))
     values, _ = compute_tile(rook, tile)
     write_tile(open_arrays(tmp_path), tile, values)
     grid = xr.open_zarr(tmp_path / STORE, chunks=None)

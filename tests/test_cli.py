@@ -1,0 +1,187 @@
+"""Commands in processes of their own: exit codes, what goes to which output, and what is left on disk."""
+
+from __future__ import annotations
+
+import json
+import os
+import pty
+import re
+from pathlib import Path
+
+import pandas as pd
+import pytest
+from command import PORKGRID, messages, porkgrid
+from survey_scenarios import ROOK, changed, limited, written
+
+COMMANDS = ["sweep", "chart", "rank", "check", "bodies", "measures"]
+ESCAPE = "\x1b"
+
+
+@pytest.fixture(scope="module")
+def scenario(tmp_path_factory) -> Path:
+    return written(tmp_path_factory.mktemp("rook"), ROOK)
+
+
+@pytest.fixture(scope="module")
+def swept(scenario):
+    """(result, folder) of the first sweep."""
+    folder = scenario.parent / "survey"
+    return porkgrid("sweep", scenario, "--out", folder), folder
+
+
+def table_of(result):
+    """Printed rows that start with a rank and a date."""
+    return re.findall(r"^ *(\d+) +(\d{4}-\d\d-\d\d) +(\d{4}-\d\d-\d\d) ", result.stdout, re.M)
+
+
+def test_help_is_there_for_every_command():
+    result = porkgrid("--help")
+    assert result.returncode == 0
+    assert result.stderr == ""
+    for command in COMMANDS:
+        assert re.search(rf"^  {command} ", result.stdout, re.M)
+        help_of_it = porkgrid(command, "--help")
+        assert help_of_it.returncode == 0
+        assert f"porkgrid {command}" in help_of_it.stdout or "Usage:" in help_of_it.stdout
+
+
+def test_a_sweep_prints_the_table_and_draws_the_charts(swept):
+    result, folder = swept
+    assert result.returncode == 0, result.stderr
+    csv = pd.read_csv(folder / "candidates.csv")
+    shown = [(str(row["rank"]), row["departure"], row["arrival"]) for _, row in csv.iterrows()]
+    assert table_of(result) == shown
+    assert "dv_total_km_s" in result.stdout
+    figures = [folder / "figures" / name for name in ("chart.png", "limits.png")]
+    assert messages(result) == [*map(str, figures), f"survey in {folder}"]
+    assert all(path.read_bytes().startswith(b"\x89PNG") for path in figures)
+
+
+def test_what_does_not_go_to_a_terminal_has_no_colour_and_no_bar(swept):
+    result, _ = swept
+    for text in (result.stdout, result.stderr):
+        assert ESCAPE not in text
+        assert "\r" not in text
+    assert "sweeping" not in result.stderr
+
+
+def test_sweeping_again_tells_the_same_as_json(swept, scenario):
+    _, folder = swept
+    before = (folder / "survey.json").read_bytes()
+    result = porkgrid("sweep", scenario, "--out", folder, "--json")
+    assert result.returncode == 0, result.stderr
+    told = json.loads(result.stdout)
+    assert (told["name"], told["route"], told["cells"]) == ("Rook to Mars", "Earth → Mars", 43 * 59)
+    assert told["survey"] == str(folder)
+    assert told["closed"] == []
+    assert all(Path(path).is_file() for path in told["figures"])
+    expected = pd.read_csv(folder / "candidates.csv").to_dict("records")
+    assert told["candidates"] == expected
+    assert (folder / "survey.json").read_bytes() == before
+
+
+def test_ranking_by_another_measure(swept):
+    _, folder = swept
+    result = porkgrid("rank", folder, "--by", "tof_days", "--order", "most", "--keep", "2", "--json")
+    assert result.returncode == 0, result.stderr
+    ranked = json.loads(result.stdout)
+    assert [row["rank"] for row in ranked] == [1, 2]
+    assert ranked[0]["tof_days"] >= ranked[1]["tof_days"]
+    table = porkgrid("rank", folder, "--by", "tof_days", "--order", "most", "--keep", "2")
+    assert table_of(table) == [(str(row["rank"]), row["departure"], row["arrival"]) for row in ranked]
+    assert "tof_days *" in table.stdout
+
+
+def test_a_chart_of_any_measure_in_any_format(swept):
+    _, folder = swept
+    measures = ("--of", "c3_km2_s2", "--lines", "v_inf_arrival_km_s")
+    result = porkgrid("chart", folder, *measures, "--format", "svg", "--format", "pdf")
+    assert result.returncode == 0, result.stderr
+    paths = [Path(line) for line in result.stdout.splitlines()]
+    assert [path.suffix for path in paths] == [".svg", ".pdf", ".svg", ".pdf"]
+    assert all(path.stat().st_size > 1000 for path in paths)
+
+
+def test_checking_says_what_a_sweep_would_cost(scenario):
+    result = porkgrid("check", scenario, "--json")
+    assert result.returncode == 0, result.stderr
+    told = json.loads(result.stdout)
+    assert told["cells"] == told["lambert_solves"] == 43 * 59
+    assert min(told[key] for key in ("seconds", "memory_bytes", "disk_bytes", "workers", "tiles")) > 0
+    assert "2,537 cells in 1 tile" in porkgrid("check", scenario).stdout
+
+
+def test_bodies_are_listed_with_what_is_known_of_them():
+    told = json.loads(porkgrid("bodies", "--json").stdout)
+    assert told["mars"]["naif_id"] == 4
+    assert told["earth"]["gm_km3_s2"] == pytest.approx(398_600.4355, rel=1e-9)
+    assert {"mercury", "venus", "moon", "pluto"} <= told.keys()
+    assert re.search(r"^venus +299 +324858\.592 ", porkgrid("bodies").stdout, re.M)
+
+
+def test_measures_are_listed_for_all_routes_or_for_one(scenario):
+    everything = json.loads(porkgrid("measures", "--json").stdout)
+    assert {"name": "c3_km2_s2", "unit": "km²/s²"}.items() <= everything[2].items()
+    mine = json.loads(porkgrid("measures", scenario, "--json").stdout)
+    assert {"leg1_revs", "dv_capture_km_s"} <= {each["name"] for each in mine}
+    assert "leg{n}_revs" in {each["name"] for each in everything}
+
+
+def test_where_the_limits_forbid_every_cell_it_is_said_and_drawn_all_the_same(tmp_path):
+    path = written(tmp_path, limited(ROOK, "c3_km2_s2 = { max = 5 }\ntof_days = { max = 400 }"))
+    result = porkgrid("sweep", path, "--out", tmp_path / "survey")
+    assert result.returncode == 0, result.stderr
+    said = messages(result)
+    assert said[0] == "The limits forbid every cell."
+    assert said[1].startswith("Most costly: C3 at most 5 km²/s², which forbids ")
+    assert re.fullmatch(r"The first cell opens with c3_km2_s2 max = \d+\.\d+ km²/s²\.", said[2])
+    assert table_of(result) == []
+    for name in ("chart.png", "limits.png"):
+        assert (tmp_path / "survey" / "figures" / name).stat().st_size > 10_000
+
+
+@pytest.mark.parametrize(
+    ("arguments", "says"),
+    [
+        (["sweap"], "No such command 'sweap'"),
+        (["sweep"], "Missing argument 'SCENARIO'"),
+        (["sweep", "x.toml", "--workers", "0"], "Invalid value for '--workers'"),
+        (["sweep", "x.toml", "--wrokers", "2"], "No such option"),
+        (["rank", "x", "--order", "best"], "Invalid value for '--order'"),
+        (["chart", "x", "--format", "jpg"], "Invalid value for '--format'"),
+    ],
+)
+def test_a_wrong_command_line_exits_2_and_says_what_is_wrong(arguments, says):
+    result = porkgrid(*arguments)
+    assert result.returncode == 2
+    assert says in result.stderr
+    assert "Traceback" not in result.stderr
+    assert result.stdout == ""
+
+
+def on_a_terminal(arguments: list[str], env: dict[str, str]) -> tuple[int, str]:
+    """Exit code and all that a terminal was sent."""
+    pid, terminal = pty.fork()
+    if pid == 0:
+        os.environ.update(env)
+        os.execvp(PORKGRID[0], [*PORKGRID, *arguments])
+    sent = b""
+    try:
+        while data := os.read(terminal, 4096):
+            sent += data
+    except OSError:  # how Linux says that the other end is closed
+        pass
+    _, status = os.waitpid(pid, 0)
+    return os.waitstatus_to_exitcode(status), sent.decode()
+
+
+@pytest.mark.parametrize("no_color", ["", "1"])
+def test_a_terminal_sees_a_bar_unless_no_color_is_set(tmp_path, no_color):
+    small = changed(ROOK, ("step_days = 5.0", "step_days = 25.0"), ("step_days = 7.0", "step_days = 25.0"))
+    path = written(tmp_path, 'measures = ["c3_km2_s2"]\n' + small)
+    arguments = ["sweep", str(path), "--out", str(tmp_path / "survey")]
+    code, sent = on_a_terminal(arguments, {"TERM": "xterm", "NO_COLOR": no_color})
+    assert code == 0
+    assert (ESCAPE in sent) == (not no_color)
+    assert ("sweeping" in sent or "cells/s" in sent) == (not no_color)
+    assert "Rook to Mars" in sent
