@@ -52,7 +52,8 @@ _INTERRUPTED = 130  # exit code
 
 # Columns of the candidates' table on the terminal, where the route has them; the file has all measures.
 _SHOWN = ("tof_days", "c3_km2_s2", "dla_deg", "v_inf_arrival_km_s", "dv_departure_km_s", "dv_capture_km_s",
-          "dv_total_km_s", "leg1_revs")  # fmt: skip
+          "dv_total_km_s")  # fmt: skip
+_SHOWN_PER_FLYBY = ("_altitude_km", "_burn_km_s")
 
 
 @app.command()
@@ -261,16 +262,20 @@ def _print_candidates(survey: Survey, table: Any, by: str, as_json: bool) -> Non
         terminal.print_json(table.to_dict("records"))
         return
     measures = survey.plan.measures
-    names = [name for name in _SHOWN if name in measures and (name != "leg1_revs" or table[name].any())]
-    names += [by] if by not in names else []
+    names = [name for name in _SHOWN if name in measures and name != by]
+    names += [name for name in measures if name.endswith("_revs") and table[name].any()]
+    names += [name for name in measures if name.endswith(_SHOWN_PER_FLYBY) and name != by]
     units = {name: measure.unit for name, measure in measures.items()}
-    headings = ["#", "departure", "arrival", *(f"{name}" + (" *" if name == by else "") for name in names)]
-    grid = survey.provenance
+    dates = [name for name in table.columns if name not in measures and name != "rank"]
+    headings = ["#", *dates, *names, f"{by} *"]
+    rows = terminal.candidate_rows(table, units, [*names, by])
+    columns = terminal.fitting(headings, rows, terminal.output().width)
+    facts = survey.provenance
     title = (
-        f"{grid['name']}: {grid['route']}\n{grid['cells_allowed']:,} of {grid['cells']:,} cells are allowed; "
+        f"{facts['name']}: {facts['route']}\n{facts['cells_allowed']:,} of {facts['cells']:,} cells are allowed; "
         f"candidates by {by} (*)"
     )
-    terminal.print_table(headings, terminal.candidate_rows(table, units, names), title)
+    terminal.print_table([headings[c] for c in columns], [[row[c] for c in columns] for row in rows], title)
 
 
 def _compile(warm_up: Any) -> None:

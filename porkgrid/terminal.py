@@ -20,7 +20,7 @@ if TYPE_CHECKING:
     from porkgrid.survey.sweep import Progress
 
 _DIGITS = {"km/s": 3, "km²/s²": 2, "deg": 1, "days": 1, "au": 3, "1": 0, "kg": 0, "km": 0}
-_PLAIN_WIDTH = 200  # columns of a table that does not go to a terminal
+_PLAIN_WIDTH = 1000  # columns of a table that does not go to a terminal
 
 
 def output() -> Console:
@@ -44,10 +44,42 @@ def print_table(headings: Sequence[str], rows: Iterable[Sequence[str]], title: s
     table = Table(box=box.SIMPLE_HEAD, title=title, title_justify="left", pad_edge=False)
     for index, heading in enumerate(headings):
         numeric = bool(body) and all(_is_number(row[index]) for row in body)
-        table.add_column(heading, justify="right" if numeric else "left", overflow="fold")
+        table.add_column(_broken(heading), justify="right" if numeric else "left", no_wrap=not numeric)
     for row in body:
         table.add_row(*row)
     output().print(table, highlight=False, markup=False)
+
+
+def fitting(headings: Sequence[str], rows: Sequence[Sequence[str]], width: int) -> list[int]:
+    """Which columns of a table fit side by side, the last one kept whatever happens; wide ones count whole."""
+    taken = [
+        max(
+            len(part)
+            for cell in (_broken(heading), *(row[index] for row in rows))
+            for part in cell.split("\n")
+        )
+        + 3
+        for index, heading in enumerate(headings)
+    ]
+    last = len(headings) - 1
+    room = width - taken[last]
+    kept = []
+    for index, each in enumerate(taken[:last]):
+        if each > room:
+            break
+        room -= each
+        kept.append(index)
+    return [*kept, last]
+
+
+def _broken(name: str, width: int = 11) -> str:
+    """A long name on several lines, broken behind underscores."""
+    lines = [""]
+    for word in name.replace("_", "_\0").split("\0"):
+        if lines[-1] and len(lines[-1]) + len(word) > width:
+            lines.append("")
+        lines[-1] += word
+    return "\n".join(lines)
 
 
 def number(value: float, unit: str) -> str:

@@ -10,9 +10,10 @@ import typer
 from pydantic import BaseModel
 
 from porkgrid import cli, load_scenario
-from porkgrid.scenario import BodySpec, Encounter, Leg, Limit, Orbit, Parking, Rank, read_scenario
+from porkgrid.scenario import BodySpec, Encounter, Flyby, Leg, Limit, Orbit, Parking, Rank, read_scenario
 from porkgrid.scenario.sections import SECTIONS
-from porkgrid.survey.measures import FEATURES, measures_for
+from porkgrid.survey.measures import all_entries
+from porkgrid.survey.plan import make_plan
 
 ROOT = Path(__file__).parents[1]
 README = (ROOT / "README.md").read_text()
@@ -21,7 +22,7 @@ CI_RUN = (ROOT / ".ci" / "run").read_text()
 
 BLOCKS = re.findall(r"^```(\w+)\n(.*?)^```$", README, re.MULTILINE | re.DOTALL)
 MAIN_JOB, TESTS = (text for _, text in BLOCKS[:2])
-WHOLE_SCENARIO, OWN_BODIES = (text for kind, text in BLOCKS if kind == "toml")
+WHOLE_SCENARIO, FLYBY_SCENARIO, OWN_BODIES = (text for kind, text in BLOCKS if kind == "toml")
 SAMPLE, FOLDER = (text for kind, text in BLOCKS if kind == "text")
 (PYTHON,) = (text for kind, text in BLOCKS if kind == "python")
 
@@ -88,10 +89,13 @@ def test_commands_that_the_readme_says_print_json_can(here, capsys):
     assert set(re.findall(r"`(\w+)`", clause)) == able
 
 
-def test_the_scenario_example_is_admitted(here):
+@pytest.mark.parametrize("text", [WHOLE_SCENARIO, FLYBY_SCENARIO], ids=["direct", "flyby"])
+def test_the_scenario_examples_are_admitted_and_can_be_swept(here, text):
     path = here / "scenario.toml"
-    path.write_text(WHOLE_SCENARIO)
-    assert load_scenario(path).name == tomllib.loads(WHOLE_SCENARIO)["name"]
+    path.write_text(text)
+    scenario = load_scenario(path)
+    assert scenario.name == tomllib.loads(text)["name"]
+    assert make_plan(scenario).shape[0] > 1
 
 
 def test_the_bodies_example_validates_in_that_scenario(here):
@@ -113,17 +117,18 @@ def test_the_examples_show_every_key():
             return set(value).union(*map(keys, value.values()))
         return set().union(*map(keys, value)) if isinstance(value, list) else set()
 
-    shown = keys(tomllib.loads(WHOLE_SCENARIO)) | keys(tomllib.loads(OWN_BODIES))
-    models: list[type[BaseModel]] = [Encounter, Orbit, Parking, Leg, Limit, Rank, BodySpec]
+    examples = (WHOLE_SCENARIO, FLYBY_SCENARIO, OWN_BODIES)
+    shown = set().union(*(keys(tomllib.loads(text)) for text in examples))
+    models: list[type[BaseModel]] = [Encounter, Orbit, Parking, Flyby, Leg, Limit, Rank, BodySpec]
     known = set(SECTIONS).union(*(model.model_fields for model in models))
-    assert known - shown <= {"flyby"}  # routes with flybys cannot be swept yet, as the README says
+    assert known <= shown
 
 
 def test_every_measure_is_in_the_readme_and_every_measure_in_it_exists():
     listed = README.partition("## Measures")[2].partition("## How to read")[0]
     named = set(re.findall(r"^- .*?(?=^- |\Z|^$)", listed, re.MULTILINE | re.DOTALL))
     names = set(re.findall(r"`(\w+)`", " ".join(named)))
-    assert names == set(measures_for(1, frozenset(FEATURES)))
+    assert {re.sub(r"^(leg|flyby)1", r"\1{n}", name) for name in names} == {e.name for e in all_entries()}
 
 
 @pytest.mark.parametrize("text", [README, DEVELOPERS], ids=["README", "DEVELOPERS"])

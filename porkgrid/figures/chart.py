@@ -134,7 +134,7 @@ def _state_what_is_missing(panel: Panel, sheet: Axes, measured: Measured, ground
 
 def _name_strips(sheet: Axes, measured: Measured, order: str) -> None:
     """Write what the strips show, in the corner between them."""
-    what = wrap(f"{_word(measured, order)} {measured.title}", _CAPTION_IN, SMALL_PT, 2)
+    what = wrap(f"{_word(measured, order)} {measured.caption}", _CAPTION_IN, SMALL_PT, 2)
     x, below = _ARRIVAL_BOX.left, _DEPARTURE_BOX.right + 0.12
     put(sheet, x, 1.92, "\n".join([*what, "of each arrival day"]), SMALL_PT, va="top", color=SOFT_INK)
     caption = "\n".join([*what, "of each departure day"])

@@ -28,7 +28,8 @@ def draw_figures(survey: Survey, of: str | None, lines: str | None, formats: Seq
         if name is not None:
             _must_store(survey, name)
     names = [of, *([lines] if lines else [])]
-    view = drawn_view(survey, [*names, "departure_epoch_jd_tdb", "arrival_epoch_jd_tdb"])
+    epochs = ("departure_epoch_jd_tdb", "arrival_epoch_jd_tdb")
+    view = drawn_view(survey, list(dict.fromkeys((*names, *epochs))))
     chart = draw_chart(view, day_bests(survey, of), survey.candidates, of, lines)
     folder = survey.path / FIGURES
     folder.mkdir(exist_ok=True)
@@ -43,6 +44,6 @@ def _second(survey: Survey, of: str) -> str | None:
 
 
 def _must_store(survey: Survey, name: str) -> None:
-    if name not in survey.grid or name.endswith("_epoch_jd_tdb") or name == "blocked_by":
+    if name not in survey.grid.data_vars or name == "blocked_by":
         stored = ", ".join(sorted(each for each in survey.grid.data_vars if each in survey.plan.measures))
         raise RequestError(f"{survey.path}: the survey does not store {name!r}; it has {stored}")

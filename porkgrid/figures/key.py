@@ -86,8 +86,8 @@ def draw_colour_bar(column: Column, scale: Scale, heading: str) -> None:
 
 def _draw_closed_bar(column: Column, scale: Scale, top: float, height: float) -> np.ndarray:
     """Draw bands that hold every value; return the places of their bounds."""
-    width = (column.width - 0.3) / len(scale.colours)
-    edges = column.left + 0.08 + width * np.arange(len(scale.levels))
+    inset = max(0.08, 0.5 * max(width_in(text, SMALL_PT) for text in scale.texts))
+    edges = np.linspace(column.left + inset, column.right - inset, len(scale.levels))
     _draw_bands(column, edges, scale.colours, top, height)
     frame = {"fill": False, "edgecolor": SOFT_INK, "linewidth": 0.5}
     add_rectangle(column.sheet, edges[0], top - height, edges[-1] - edges[0], height, **frame)
@@ -142,7 +142,7 @@ def draw_candidate_table(
     rows = _dates_and_flights(candidates[:shown])
     right = column.left + max(_LEFT_PART * column.width, max((_width(cells) for cells in rows), default=0.0))
     value_room = column.right - right - 0.15
-    head = shorten(measured.title, value_room, SMALL_PT) if measured.name in candidates else ""
+    head = shorten(measured.caption, value_room, SMALL_PT) if measured.name in candidates else ""
 
     column.y -= _ROW
     _table_heads(column, rows[:1], right, head)

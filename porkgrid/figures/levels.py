@@ -17,7 +17,7 @@ from porkgrid.figures.palette import depth_colours
 
 _ROUND_STEPS = (1.0, 2.0, 2.5, 5.0, 10.0)
 _BANDS = 10
-_DATE_BANDS = 9
+_DATE_BANDS = 12
 _FLOAT32_NOISE = 1e-6  # the store holds single precision; a smaller relative spread is a constant
 
 
@@ -52,8 +52,12 @@ class Dates:
         return iso_day(dates_from_days(value - UNIX_EPOCH_JD))
 
     def texts(self, levels: np.ndarray) -> list[str]:
-        """Write the days of levels."""
-        return [self.text(float(level)) for level in levels]
+        """Write the days of levels; months, or years, where all of them begin one."""
+        days = [self.text(float(level)) for level in levels]
+        for start in ("-01-01", "-01"):
+            if all(day.endswith(start) for day in days):
+                return [day.removesuffix(start) for day in days]
+        return days
 
     def ticks(self, low: float, high: float, most: int) -> tuple[np.ndarray, list[str]]:
         """Return round dates in a range, at most so many, with their texts."""

@@ -38,6 +38,11 @@ class Measured:
         """Return label and unit for an axis."""
         return f"{self.label} ({self.unit})" if self.unit else self.label
 
+    @property
+    def caption(self) -> str:
+        """Return the title for narrow places: a date is known for one without its time scale."""
+        return self.label if self.is_date else self.title
+
     def with_unit(self, number: str) -> str:
         """Return a number followed by the unit."""
         return f"{number} {self.unit}" if self.unit and not self.is_date else number

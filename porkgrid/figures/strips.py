@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from itertools import pairwise
 
@@ -17,10 +17,11 @@ from porkgrid.figures.marks import add_line, add_rectangle
 from porkgrid.figures.panel import Panel, mark_departure_dates
 from porkgrid.figures.placement import Box
 from porkgrid.figures.style import FAINT_INK, INK, SMALL_PT, SOFT_INK, axes_at
-from porkgrid.figures.text import put, width_in
+from porkgrid.figures.text import POINTS_PER_INCH, put, width_in
 
 WINDOW_INK = "#2b59c3"
 _LANE_IN = 0.07  # thickness of a window's bar
+_MOST_TICKS, _TICK_GAP_IN = 4, 0.06
 _MARGIN = 0.03  # of a strip's range, beside its extreme values
 _LEAST_BAR_IN = 0.03  # so that a window of one day in fifteen years can be seen
 
@@ -80,7 +81,7 @@ def draw_departure_strip(
         axes.set_yticks([])
     else:
         axes.set_ylim(_reach(best, scale))
-        _mark_values(axes.yaxis, scale)
+        _mark_values(axes.yaxis, scale, box.top - box.bottom, lambda _: SMALL_PT / POINTS_PER_INCH)
         add_line(axes, *_steps(dates, best), color=INK, linewidth=1.2)
 
     windows = open_windows(dates, best)
@@ -110,7 +111,7 @@ def draw_arrival_strip(
         axes.set_xticks([])
     else:
         axes.set_xlim(_reach(best, scale))
-        _mark_values(axes.xaxis, scale)
+        _mark_values(axes.xaxis, scale, box.right - box.left, lambda text: width_in(text, SMALL_PT))
         days, values = _steps(dates, best)
         add_line(axes, values, days, color=INK, linewidth=1.2)
 
@@ -139,10 +140,19 @@ def _reach(best: np.ndarray, scale: Scale) -> tuple[float, float]:
     return low if least >= low else least - margin, high if most <= high else most + margin
 
 
-def _mark_values(axis: Axis, scale: Scale) -> None:
-    """Put two to four round values on a short axis, with faint lines across."""
-    ticks, labels = scale.writing.ticks(*axis.get_view_interval(), 3)
-    axis.set_ticks(ticks, labels=labels)
+def _mark_values(axis: Axis, scale: Scale, length: float, room_of: Callable[[str], float]) -> None:
+    """Put as many round values on a short axis as it has room for, four at most, with faint lines across.
+
+    length: of the axis, inches; room_of: the inches along it that a text needs.
+    """
+    low, high = axis.get_view_interval()
+    for most in range(_MOST_TICKS, 0, -1):
+        ticks, texts = scale.writing.ticks(low, high, most)
+        gaps = np.diff(ticks) * length / (high - low)
+        widest = max((room_of(text) for text in texts), default=0.0)
+        if len(ticks) and gaps.min(initial=np.inf) > widest + _TICK_GAP_IN:
+            break
+    axis.set_ticks(ticks, labels=texts)
     axis.axes.grid(True, color=FAINT_INK, linewidth=0.35, alpha=0.6)
 
 

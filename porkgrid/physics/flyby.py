@@ -26,6 +26,7 @@ Floats = NDArray[np.float64]
 
 _EPS = float(np.finfo(float).eps)
 _TINY = float(np.finfo(float).tiny)
+_LONGEST_STEP = 100.0  # in ln y: longer ones, which exp might not hold, leave the bracket all the same
 _MOST_STEPS = 100  # the tests need 20 for speeds that differ by a factor of a million
 
 
@@ -201,7 +202,7 @@ def _root(a2, b2, turn, rest):
         else:
             low = y
         slope = fall * (1.0 + sine) / (2.0 * sine * cosine)
-        new = y * math.exp(-miss / slope)
+        new = y * math.exp(max(-_LONGEST_STEP, min(_LONGEST_STEP, -miss / slope)))
         if abs(miss) <= 4.0 * _EPS or abs(new - y) <= _EPS * y:
             return new
         y = new if low < new < high else math.sqrt(low) * math.sqrt(high)

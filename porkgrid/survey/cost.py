@@ -8,6 +8,7 @@ import time
 from dataclasses import dataclass
 from pathlib import Path
 
+from porkgrid.survey.chains import memory_bytes, prepare
 from porkgrid.survey.measures import BOTH
 from porkgrid.survey.plan import Plan
 from porkgrid.survey.store import create_store, open_arrays, write_tile
@@ -37,6 +38,7 @@ def predict(plan: Plan, workers: int | None = None) -> Cost:
     """Sweep the middle tile into a temporary folder and scale up."""
     threads = min(workers or os.cpu_count() or 1, len(plan.tiles))
     warm_up(plan)
+    prepared = _seconds_to_prepare(plan)
     tile = plan.tiles[len(plan.tiles) // 2]
     with tempfile.TemporaryDirectory() as name:
         folder = Path(name)
@@ -52,13 +54,24 @@ def predict(plan: Plan, workers: int | None = None) -> Cost:
     kept = sum(4.0 for name in plan.stored if plan.measures[name].dims == BOTH) + 4.0
     return Cost(
         cells=n * m,
-        lambert_solves=n * m * sum(len(options) for options in plan.options),
+        lambert_solves=plan.lambert_solves,
         tiles=len(plan.tiles),
         workers=threads,
-        seconds=seconds * scale / threads,
-        memory_bytes=BASE_BYTES + threads * plan.tiles[0].cells * (8.0 * WORKING_ARRAYS + kept),
+        seconds=prepared + seconds * scale / threads,
+        memory_bytes=BASE_BYTES
+        + threads * plan.tiles[0].cells * (8.0 * WORKING_ARRAYS * (1 + plan.flybys) + kept)
+        + (memory_bytes(plan, threads * plan.chunks[0]) if plan.flybys else 0.0),
         disk_bytes=bare + disk * scale,
     )
+
+
+def _seconds_to_prepare(plan: Plan) -> float:
+    """What the legs after the first flyby take, which all tiles share."""
+    if not plan.flybys:
+        return 0.0
+    started = time.perf_counter()
+    prepare(plan)
+    return time.perf_counter() - started
 
 
 def _bytes_in(folder: Path) -> int:

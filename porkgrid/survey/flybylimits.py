@@ -81,7 +81,7 @@ def _burn_faults(plan: Plan) -> Iterator[str]:
         if bound.measure.scope == FLYBY and "burn" in bound.measure.name and bound.most == 0.0:
             yield (
                 f"encounter {bound.measure.number + 1}, flyby, max_burn_km_s: on a grid of dates no "
-                "unpowered flyby matches exactly, so 0 allows none; give what the grid may miss by, such as 0.2"
+                "unpowered flyby matches exactly, so 0 allows none; give what it may miss by, such as 0.2"
             )
 
 
@@ -92,6 +92,6 @@ def _memory_faults(plan: Plan) -> Iterator[str]:
         factor = (need / there) ** 0.5  # legs are pairs of dates
         steps = ", ".join(f"{1.05 * factor * each.step_days:.2g}" for each in plan.scenario.encounters)
         yield (
-            f"encounter, step_days: the legs between flybys take {need / 1e9:.1f} GB and {there / 1e9:.1f} GB "
+            f"encounter, step_days: legs between flybys take {need / 1e9:.1f} GB, and {there / 1e9:.1f} GB "
             f"may be used; steps of {steps} days would fit"
         )

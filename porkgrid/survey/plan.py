@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator
 from dataclasses import dataclass
 from functools import cached_property
+from itertools import pairwise
 
 import numpy as np
 
@@ -22,6 +23,7 @@ from porkgrid.survey.measures import ENDS, Measure, default_rank, features_of, m
 # A tile is a chunk of the store: 2^17 cells keep a tile's arrays at a megabyte each.
 TILE_COLUMNS = 1024
 TILE_CELLS = 2**17
+SEARCH_TILES = 32
 
 
 @dataclass(frozen=True)
@@ -66,13 +68,22 @@ class Plan:
     def chunks(self) -> tuple[int, int]:
         """Rows and columns of a whole tile."""
         n, m = self.shape
-        columns = m if self.flybys else min(m, TILE_COLUMNS)  # a search reaches all arrivals at once
+        if self.flybys:  # a search reaches all arrivals at once, and is dear: many small tiles
+            return max(1, min(TILE_CELLS // m, -(-n // SEARCH_TILES))), m
+        columns = min(m, TILE_COLUMNS)
         return min(n, max(1, TILE_CELLS // columns)), columns
 
     @cached_property
     def tiles(self) -> tuple[Tile, ...]:
         """The tiles in order of number; the same for every machine and every number of workers."""
         return tuple(Tile(number, *block) for number, block in enumerate(_blocks(self.shape, self.chunks)))
+
+    @property
+    def lambert_solves(self) -> int:
+        """How many Lambert problems a sweep solves."""
+        dates = [len(table.jd) for table in self.tables]
+        pairs = zip(self.options, pairwise(dates), strict=True)
+        return sum(len(options) * a * b for options, (a, b) in pairs)
 
     @property
     def flybys(self) -> int:
@@ -131,7 +142,7 @@ def make_plan(scenario: Scenario) -> Plan:
 
 
 def _objective(measures: dict[str, Measure], rank_by: str, sign: float) -> tuple[Measure, float]:
-    """What to search flyby dates by: the ranked measure, or the total Δv where dates alone decide the rank."""
+    """What to search flyby dates by: the ranked measure, or total Δv where dates alone decide the rank."""
     if measures[rank_by].scope == ENDS and "dv_total_km_s" in measures:
         return measures["dv_total_km_s"], 1.0
     return measures[rank_by], sign

@@ -146,14 +146,13 @@ def _finish(folder: Path, plan: Plan, provenance: dict[str, Any]) -> None:
         return
     started = datetime.fromisoformat(provenance["started"])
     seconds = (datetime.now(UTC) - started).total_seconds()
-    solves = sums.cells * sum(len(options) for options in plan.options)
     provenance |= {
         "state": folders.COMPLETE,
         "finished": datetime.now(UTC).isoformat(timespec="seconds"),
         "seconds": seconds,
         "cells": sums.cells,
         "cells_allowed": sums.allowed,
-        "lambert_solves": solves,
+        "lambert_solves": plan.lambert_solves,
         "cells_per_second": round(sums.cells / max(seconds, 1e-9)),
         "cells_forbidden_by": sums.forbidden,
         "cells_forbidden_by_it_alone": sums.alone,

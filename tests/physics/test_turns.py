@@ -9,6 +9,7 @@ from mpmath import mp, mpf
 from numba import njit
 
 from porkgrid.physics import turns
+from porkgrid.physics.timeflight import PLAIN
 
 EPS = 2.0**-52
 SPEED2 = st.floats(0.01, 400.0)  # km²/s²: v∞ from 0.1 to 20 km/s
@@ -16,27 +17,27 @@ WITHIN_TWO = st.floats(0.5, 2.0)
 TURN = st.floats(1e-3, 3.13)
 
 
-@njit
+@njit(**PLAIN)
 def half_turn(v2y):
     return turns.half_turn(v2y)
 
 
-@njit
+@njit(**PLAIN)
 def start(a2, b2, per_sine):
     return turns.periapsis_start(a2, b2, per_sine)
 
 
-@njit
+@njit(**PLAIN)
 def step(a2, b2, per_sine, y):
     return turns.periapsis_step(a2, b2, per_sine, y)
 
 
-@njit
+@njit(**PLAIN)
 def periapsis(a2, b2, cosine):
     return turns.periapsis(a2, b2, cosine)
 
 
-@njit
+@njit(**PLAIN)
 def burn_at(a2, b2, y):
     return turns.burn_at(a2, b2, y)
 

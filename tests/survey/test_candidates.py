@@ -4,11 +4,12 @@ import numpy as np
 import pandas as pd
 import pytest
 import xarray as xr
-from survey_scenarios import ROOK, changed, limited
+from survey_scenarios import LOOPS, ROOK, changed, limited
 
 from porkgrid.errors import RequestError
 from porkgrid.sky.epochs import datetime64_from_jd
-from porkgrid.survey.candidates import measure_at, rank_anew
+from porkgrid.survey.candidates import Picked, measures_at, rank_anew
+from porkgrid.survey.legs import LegOption
 from porkgrid.survey.measures import BOTH
 
 
@@ -81,15 +82,26 @@ def test_measures_between_the_grids_dates_lie_between_those_of_the_grid(rook, ro
     """A C3 half-way, against the mean of the cells around, which bends by a few per cent over these steps."""
     i, j = 15, 25
     jd1, jd2 = rook.tables[0].jd, rook.tables[1].jd
-    found = measure_at(rook, 0.5 * (jd1[i] + jd1[i + 1]), 0.5 * (jd2[j] + jd2[j + 1]))
+    between = Picked((0.5 * (jd1[i] + jd1[i + 1]), 0.5 * (jd2[j] + jd2[j + 1])), (LegOption(),))
+    found = measures_at(rook, between)
     around = rook_cells.c3[i : i + 2, j : j + 2]
     assert found["c3_km2_s2"] == pytest.approx(around.mean(), rel=0.03)
     assert found["tof_days"] == 0.5 * (jd2[j] + jd2[j + 1] - jd1[i] - jd1[i + 1])
-    on_grid = measure_at(rook, jd1[i], jd2[j])
+    on_grid = measures_at(rook, Picked((jd1[i], jd2[j]), (LegOption(),)))
     assert on_grid.keys() == rook.measures.keys()
     for name, measure in rook.measures.items():
         cell = np.broadcast_to(measure.compute(rook_cells), rook.shape)[i, j]
         assert on_grid[name] == pytest.approx(cell, rel=1e-11), name
+
+
+def test_a_candidate_with_revolutions_is_tabulated_as_it_is_flown(sweep_text):
+    """The cheapest flights of this grid that limits leave are of all three options."""
+    survey = sweep_text(LOOPS + "\n[rank]\nkeep = 60\napart_days = 0\n")
+    table = survey.candidates
+    assert len({(row["leg1_revs"], row["leg1_branch"]) for _, row in table.iterrows()}) > 1
+    cells = cells_of(survey, table)
+    for name in ("leg1_revs", "leg1_branch", "c3_km2_s2", "v_inf_arrival_km_s", "sun_max_au"):
+        np.testing.assert_allclose(table[name], cells[name].values, rtol=2e-7, err_msg=name)
 
 
 # Ranking anew

@@ -2,6 +2,7 @@
 
 import os
 import time
+from itertools import count
 
 import pytest
 from survey_scenarios import LOOPS, ROOK, changed
@@ -38,17 +39,23 @@ def test_fewer_measures_take_less_of_everything_on_disk(plan_of, rook):
     assert predict(lean).memory_bytes < predict(rook).memory_bytes
 
 
-def test_time_grows_with_the_grid_and_falls_with_workers(plan_of):
-    """16 times the cells; a tile is timed once, so only the orders of size are sure."""
-    fine = changed(LOOPS, ("18.0", "0.5"), ("23.0", "0.5"))
-    finer = changed(LOOPS, ("18.0", "0.125"), ("23.0", "0.125"))
-    small, large = predict(plan_of(fine), workers=1), predict(plan_of(finer), workers=1)
-    assert 14.0 < large.cells / small.cells < 18.0
-    assert 5.0 < large.seconds / small.seconds < 50.0
-    assert large.memory_bytes == small.memory_bytes  # tile by tile
-    assert predict(plan_of(finer), workers=2).seconds < 0.8 * large.seconds
+def test_time_is_that_of_a_tile_for_all_cells_shared_among_workers(plan_of, monkeypatch):
+    ticks = count()
+    monkeypatch.setattr(time, "perf_counter", lambda: float(next(ticks)))  # whatever is timed takes a second
+    plan = plan_of(changed(LOOPS, ("18.0", "0.5"), ("23.0", "0.5")))
+    n, m = plan.shape
+    tile = plan.tiles[len(plan.tiles) // 2]
+    assert predict(plan, workers=1).seconds == pytest.approx(n * m / tile.cells)
+    assert predict(plan, workers=3).seconds == pytest.approx(n * m / tile.cells / 3.0)
 
 
+def test_memory_does_not_grow_with_the_grid(plan_of):
+    fine, finer = (plan_of(changed(LOOPS, ("18.0", step), ("23.0", "0.5"))) for step in ("0.5", "0.25"))
+    assert predict(fine, workers=2).memory_bytes == predict(finer, workers=2).memory_bytes
+    assert predict(fine, workers=2).memory_bytes > predict(fine, workers=1).memory_bytes
+
+
+@pytest.mark.slow
 def test_the_time_is_that_which_the_tiles_take(plan_of, sweep_text):
     text = changed(LOOPS, ("18.0", "1.0"), ("23.0", "1.0"))
     cost = predict(plan_of(text), workers=1)
