@@ -27,7 +27,9 @@ SCENARIO = Path(__file__).parents[2] / "scenarios" / "earth-venus-mars-2034.toml
 
 
 @njit(error_model="numpy", fastmath=True)
-def plain_join(in_fields, in_cost, in_count, out_fields, out_cost, out_leg, out_count, y_min, burn_max, best, flyby):
+def plain_join(
+    in_fields, in_cost, in_count, out_fields, out_cost, out_leg, out_count, y_min, burn_max, best, flyby
+):
     """Best cost and flyby date of each arrival for one departure, a triple at a time."""
     for j in range(in_fields.shape[0]):
         for p in range(in_count[j]):
@@ -70,7 +72,11 @@ def main(dates: int = 300, rounds: int = 5) -> None:
         tally = np.zeros(3, dtype=np.int64)
         answers[name] = np.empty((len(departures), m))
         for row, legs in enumerate(departures):
-            best, came, by = np.full(m, math.inf), np.full(m, -1, dtype=np.int64), np.full(m, -1, dtype=np.int32)
+            best, came, by = (
+                np.full(m, math.inf),
+                np.full(m, -1, dtype=np.int64),
+                np.full(m, -1, dtype=np.int32),
+            )
             join(
                 legs.fields, legs.cost, legs.count, ends_out.fields, ends_out.cost, ends_out.leg, ends_out.count,
                 m, 0, values, best, came, by, tally,
@@ -88,7 +94,11 @@ def main(dates: int = 300, rounds: int = 5) -> None:
             )  # fmt: skip
             answers["plain"][row] = best
 
-    rivals = {"plain": plain, "dense": lambda: ours("dense", math.inf), "pruned": lambda: ours("pruned", 1e-9)}
+    rivals = {
+        "plain": plain,
+        "dense": lambda: ours("dense", math.inf),
+        "pruned": lambda: ours("pruned", 1e-9),
+    }
     seconds = best_seconds(rivals, rounds)
     triples = sum(int((legs.count * ends_out.count).sum()) for legs in departures)
     print(f"{triples:,} triples of legs that the limits allow, one thread, best of {rounds} alternating runs")

@@ -4,6 +4,7 @@ import math
 
 import numpy as np
 import pytest
+from exact_flyby import PARTS, SPEED, exact, exact_angle, exact_cross, exact_turn, steepness, velocities
 from hypothesis import assume, given
 from hypothesis import strategies as st
 from mpmath import mp, mpf
@@ -27,55 +28,6 @@ from porkgrid.physics.timeflight import PLAIN
 EPS = 2.0**-52
 GM = 324_858.592  # Venus, DE440
 
-SPEED = st.floats(-4.0, 3.0).map(lambda x: 10.0**x)  # km/s
-TINY = st.floats(-12.0, 0.0).map(lambda x: 10.0**x)  # rad
-SIDE = st.sampled_from([-1.0, 1.0])
-TURN = st.one_of(
-    TINY,
-    TINY.map(lambda x: math.pi - x),
-    # Of very different speeds the faster hardly turns and the slower turns by 90°: flat there
-    st.builds(lambda x, side: 0.5 * math.pi + side * x, TINY, SIDE),
-    st.floats(0.01, 3.13),
-)
-PARTS = st.tuples(*[st.floats(-1.0, 1.0)] * 3)
-
-
-@st.composite
-def velocities(draw):
-    """Draw two velocities of any speeds and turn, in any plane."""
-    first, second = np.array(draw(PARTS)), np.array(draw(PARTS))
-    assume(np.linalg.norm(np.cross(first, second)) > 1e-3)
-    x = first / np.linalg.norm(first)
-    z = np.cross(x, second)
-    z /= np.linalg.norm(z)
-    angle = draw(TURN)
-    return draw(SPEED) * x, draw(SPEED) * (math.cos(angle) * x + math.sin(angle) * np.cross(z, x))
-
-
-def exact(v):
-    return mp.matrix([mpf(float(x)) for x in v])
-
-
-def exact_cross(a, b):
-    return mp.matrix([a[1] * b[2] - a[2] * b[1], a[2] * b[0] - a[0] * b[2], a[0] * b[1] - a[1] * b[0]])
-
-
-def exact_angle(a, b):
-    """Return the angle between two vectors of doubles and what it lacks to π."""
-    a, b = exact(a), exact(b)
-    sine, cosine = mp.norm(exact_cross(a, b)), mp.fdot(a, b)
-    return mp.atan2(sine, cosine), mp.atan2(sine, -cosine)
-
-
-def exact_turn(a, b, y):
-    return sum(mp.asin(1 / (1 + mp.fdot(exact(v), exact(v)) * y)) for v in (a, b))
-
-
-def steepness(a, b, y):
-    """Return −dδ/d ln y: how much of the turn hangs on the periapsis."""
-    squares = [mp.fdot(exact(v), exact(v)) * y for v in (a, b)]
-    return sum(p / ((1 + p) * mp.sqrt(p * (2 + p))) for p in squares)
-
 
 def across(speed_in, speed_out, angle):
     """Two velocities in the plane of x and y, the first along x."""
@@ -87,17 +39,11 @@ def across(speed_in, speed_out, angle):
     )
 
 
-# --- the angle
-
-
 @given(velocities())
 def test_the_turn_keeps_its_digits_from_the_tiniest_to_nearly_180_degrees(pair):
     with mp.workdps(50):
         expected = float(exact_angle(*pair)[0])
     assert turn_angle(*pair) == pytest.approx(expected, rel=4 * EPS, abs=0.0)
-
-
-# --- the periapsis
 
 
 @given(velocities())
@@ -184,9 +130,6 @@ def test_what_has_no_flyby_is_nan_without_a_warning(v_in, v_out, gm):
     assert all(math.isnan(speed) for speed in periapsis_speeds(v_in, v_out, gm))
 
 
-# --- the burn
-
-
 @given(velocities())
 def test_the_burn_is_the_difference_of_the_speeds_at_periapsis(pair):
     radius = periapsis_radius(*pair, GM)
@@ -220,9 +163,6 @@ def test_the_burn_hangs_on_the_velocities_and_not_on_the_pull_of_the_body(pair):
     assert periapsis_radius(*pair, 1e-3 * GM) == pytest.approx(1e-3 * float(periapsis_radius(*pair, GM)))
 
 
-# --- the hyperbola
-
-
 @given(SPEED, st.floats(1e-3, 1e9), st.floats(1.0, 1e9))
 def test_turn_eccentricity_and_aim_distance_are_those_of_the_hyperbola(speed, radius, gm):
     with mp.workdps(50):
@@ -242,9 +182,6 @@ def test_elements_take_arrays_and_their_limits():
     assert eccentricity(3.0, radius, GM)[[0, 2]].tolist() == [1.0, math.inf]
     speeds = np.array([[0.0], [3.0]])
     assert np.isnan(aim_distance(speeds, radius, GM)).tolist() == [[True] * 3, [False] * 3]
-
-
-# --- the aim plane
 
 
 @given(velocities(), PARTS)
@@ -281,8 +218,6 @@ def test_the_aim_point_is_nan_where_no_plane_or_no_axis_is_defined(v_out, pole):
     assert np.isnan(aim_plane([4.0, 0.0, 0.0], v_out, GM, pole)).all()
 
 
-# --- the heliocentric velocity
-
 BODY_SPEED = st.tuples(*[st.floats(-50.0, 50.0)] * 3)
 
 
@@ -311,9 +246,6 @@ def test_no_gain_and_no_direction_at_rest_in_the_sun_frame():
     v, body = [3.0, 0.0, 0.0], [-3.0, 0.0, 0.0]
     assert gain(v, v, body) == 0.0
     assert math.isnan(heliocentric_turn(v, v, body))
-
-
-# --- arrays
 
 
 def test_legs_in_and_legs_out_broadcast_to_the_pairs_of_them():

@@ -15,11 +15,11 @@ from porkgrid.physics.flyby import (
     turn,
     turn_angle,
 )
+from porkgrid.physics.lambert import ECLIPTIC_POLE_ICRF
 from porkgrid.sky.bodies import BODIES
 
-# So far out, in units of the periapsis radius and gm/v∞² together, under 1e-12 of a radian is left of the turn.
+# So far out, in units of periapsis radius and gm/v∞² together, under 1e-12 of a radian is left of the turn.
 FAR = 1e6
-ECLIPTIC_POLE = np.array([0.0, -0.397777155931914, 0.917482062069182])  # in ICRF axes, J2000
 
 FLYBYS = [
     # body, v∞ before, v∞ after (km/s): a like turn, a sharp one, a slow one with much burn, a fast one
@@ -103,9 +103,9 @@ def test_aimed_at_b_t_and_b_r_and_burning_at_the_lowest_point_it_leaves_along_v_
     """It starts on the asymptote, 1/FAR beside the hyperbola that nears it: hence the tolerances."""
     gm, v_in, v_out = BODIES[body].gm_km3_s2, np.array(v_in), np.array(v_out)
     radius = periapsis_radius(v_in, v_out, gm)
-    b_t, b_r = aim_plane(v_in, v_out, gm, ECLIPTIC_POLE)
+    b_t, b_r = aim_plane(v_in, v_out, gm, ECLIPTIC_POLE_ICRF)
     s = v_in / np.linalg.norm(v_in)
-    t = np.cross(s, ECLIPTIC_POLE) / np.linalg.norm(np.cross(s, ECLIPTIC_POLE))
+    t = np.cross(s, ECLIPTIC_POLE_ICRF) / np.linalg.norm(np.cross(s, ECLIPTIC_POLE_ICRF))
     start = b_t * t + b_r * np.cross(s, t) - far(gm, radius, np.linalg.norm(v_in)) * s
     speed = np.sqrt(v_in @ v_in + 2.0 * gm / np.linalg.norm(start))
     long_enough = 2.0 * far(gm, radius, np.linalg.norm(v_in)) / np.linalg.norm(v_in)
