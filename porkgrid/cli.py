@@ -92,16 +92,30 @@ def chart(
         str | None, typer.Option(help="Measure shown as colour; by default the rank measure.")
     ] = None,
     lines: Annotated[str | None, typer.Option(help="Measure shown as lines.")] = None,
+    path: Annotated[
+        int | None, typer.Option(metavar="N", help="Draw the path of candidate N instead.")
+    ] = None,
+    flyby: Annotated[
+        int | None, typer.Option(metavar="N", help="Draw the flybys of candidate N instead.")
+    ] = None,
     formats: Formats = [Format.PNG],  # noqa: B006 - typer wants a list
 ) -> None:
-    """Draw the chart and the limit map of a survey into its figures folder.
+    """Draw figures of a survey into its figures folder: the chart and the limit map, or a candidate's.
 
     Example: porkgrid chart surveys/ouzel-to-mars-2028 --of c3_km2_s2 --lines v_inf_arrival_km_s --format pdf
+
+    Example: porkgrid chart surveys/godwit-by-venus-to-mars-2034 --path 1 --flyby 1
     """
+    from porkgrid.figures import draw
     from porkgrid.survey.surveys import open_survey
 
-    for path in _draw(open_survey(survey), of, lines, formats):
-        print(path)
+    opened, names = open_survey(survey), [each.value for each in formats]
+    drawn = draw.draw_path_of(opened, path, names) if path is not None else []
+    drawn += draw.draw_flybys_of(opened, flyby, names) if flyby is not None else []
+    if path is None and flyby is None:
+        drawn = draw.draw_figures(opened, of, lines, names)
+    for each in drawn:
+        print(each)
 
 
 @app.command()
@@ -272,8 +286,8 @@ def _print_candidates(survey: Survey, table: Any, by: str, as_json: bool) -> Non
     columns = terminal.fitting(headings, rows, terminal.output().width)
     facts = survey.provenance
     title = (
-        f"{facts['name']}: {facts['route']}\n{facts['cells_allowed']:,} of {facts['cells']:,} cells are allowed; "
-        f"candidates by {by} (*)"
+        f"{facts['name']}: {facts['route']}\n"
+        f"{facts['cells_allowed']:,} of {facts['cells']:,} cells are allowed; candidates by {by} (*)"
     )
     terminal.print_table([headings[c] for c in columns], [[row[c] for c in columns] for row in rows], title)
 

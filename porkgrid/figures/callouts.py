@@ -103,9 +103,7 @@ def _best_place(
     return best
 
 
-def _box_beyond(
-    anchor: tuple[float, float], radius: float, angle: float, width: float, height: float
-) -> Box:
+def _box_beyond(anchor: tuple[float, float], radius: float, angle: float, width: float, height: float) -> Box:
     """Return the box whose nearest edge lies at a distance from the anchor in a direction."""
     x = anchor[0] + np.cos(angle) * (radius + 0.5 * width)
     y = anchor[1] + np.sin(angle) * (radius + 0.5 * height)

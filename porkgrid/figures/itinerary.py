@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 from porkgrid.figures.key import Column
-from porkgrid.figures.numbers import ROW_IN, Pair, draw_pairs, number_text, pair
+from porkgrid.figures.numbers import ROW_IN, Pair, draw_list, draw_pairs, number_text, pair
 from porkgrid.figures.style import BODY_PT, SMALL_PT, SOFT_INK
 from porkgrid.figures.text import line_height_in, put
 from porkgrid.survey.pictures import ArcPicture, EncounterPicture, Number, RoutePicture
@@ -24,8 +24,10 @@ def draw_itinerary(column: Column, picture: RoutePicture) -> None:
     A route too long even without numbers keeps its first encounters, and says how many more there are.
     """
     whole = _pairs(picture.numbers, "")
-    stops = [_pairs(encounter.numbers, _prefix(k, encounter)) for k, encounter in enumerate(picture.encounters)]
-    room = column.y - column.bottom - _block(whole, _MOST_ROWS) - 0.06
+    stops = [
+        _pairs(encounter.numbers, _prefix(k, encounter)) for k, encounter in enumerate(picture.encounters)
+    ]
+    room = column.y - column.bottom - _HEADING_IN - len(whole) * ROW_IN - 0.12
     rows = next((n for n in range(_MOST_ROWS, 0, -1) if _height(stops, n) <= room), 0)
     shown = len(stops)
     while shown > 1 and _height(stops[:shown], rows) > room - (ROW_IN if shown < len(stops) else 0.0):
@@ -37,13 +39,15 @@ def draw_itinerary(column: Column, picture: RoutePicture) -> None:
         draw_pairs(column, stops[k][: 2 * rows])
         column.y -= 0.06
         if k < len(picture.arcs):
-            column.line(_leg_text(k + 1, picture.arcs[k]), color=LEG_COLOURS[k % len(LEG_COLOURS)], linewidth=1.7)
+            column.line(
+                _leg_text(k + 1, picture.arcs[k]), color=LEG_COLOURS[k % len(LEG_COLOURS)], linewidth=1.7
+            )
     if shown < len(stops):
         column.y -= ROW_IN
         put(column.sheet, column.left, column.y, f"… and {len(stops) - shown} more encounters", SMALL_PT)
     column.y -= 0.06
     column.heading("Whole route")
-    draw_pairs(column, whole)
+    draw_list(column, whole)
 
 
 def _pairs(numbers: Sequence[Number], prefix: str) -> list[Pair]:

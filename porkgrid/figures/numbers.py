@@ -57,5 +57,7 @@ def draw_list(column: Column, pairs: Sequence[Pair]) -> None:
     for each in pairs:
         column.y -= ROW_IN
         room = column.width - width_in(each.text, SMALL_PT) - 0.1
-        put(column.sheet, column.left, column.y, shorten(each.label, room, SMALL_PT), SMALL_PT, color=SOFT_INK)
+        put(
+            column.sheet, column.left, column.y, shorten(each.label, room, SMALL_PT), SMALL_PT, color=SOFT_INK
+        )
         put(column.sheet, column.right, column.y, each.text, SMALL_PT, ha="right")

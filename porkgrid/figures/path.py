@@ -134,9 +134,9 @@ def _draw_from_the_side(figure: Figure, sheet: Axes, scene: _Scene, plane: Plane
     axes = _axes_of(figure, plane)
     _mark(axes, plane, plane.box.right - plane.box.left)
     axes.set_yticklabels([])
-    scale = "as y" if enlarged == 1.0 else f"{enlarged:g} × y" if enlarged > 1.0 else f"y ∕ {1 / enlarged:g}"
-    axes.set_xlabel(f"z (au), scale {scale}", fontsize=BODY_PT, labelpad=2.0)
-    _caption(sheet, plane.box, "seen along x, in the ecliptic")
+    times = "" if enlarged == 1.0 else f"{enlarged:g} × "
+    axes.set_xlabel(f"z (au), {times}the scale of y", fontsize=BODY_PT, labelpad=2.0)
+    _caption(sheet, plane.box, "seen along +x, edge on")
     axes.axvline(0.0, color=FAINT_INK, linewidth=0.6, linestyle=(0, (5, 3)))
 
     drawing = _draw_lines(axes, sheet, scene, plane, (_Z, _Y))
@@ -153,7 +153,9 @@ def _axes_of(figure: Figure, plane: Plane) -> Axes:
 
 def _mark(axes: Axes, plane: Plane, width_in_: float) -> None:
     """Put round distances on both axes."""
-    for axis, limits, most in zip((axes.xaxis, axes.yaxis), plane.limits, (max(3, int(width_in_)), 6), strict=True):
+    for axis, limits, most in zip(
+        (axes.xaxis, axes.yaxis), plane.limits, (max(3, int(width_in_)), 6), strict=True
+    ):
         ticks, texts = Numbers(1.0).ticks(*limits, most)
         axis.set_ticks(ticks, labels=texts)
 
@@ -162,9 +164,7 @@ def _caption(sheet: Axes, box: Box, text: str) -> None:
     put(sheet, box.left, box.top + 0.06, text, SMALL_PT, color=SOFT_INK)
 
 
-def _draw_lines(
-    axes: Axes, sheet: Axes, scene: _Scene, plane: Plane, sides: tuple[int, int]
-) -> Drawing:
+def _draw_lines(axes: Axes, sheet: Axes, scene: _Scene, plane: Plane, sides: tuple[int, int]) -> Drawing:
     """Draw orbits, arcs with arrows, the Sun and a dot per encounter; return what labels must keep clear of.
 
     sides: which coordinates run right and up.

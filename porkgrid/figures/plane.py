@@ -99,6 +99,11 @@ def draw_arrow(sheet: Axes, start: np.ndarray, end: np.ndarray, color: str, widt
     head = min(ARROW_IN, 0.6 * length)
     neck = end - away / length * head * 0.8
     add_line(
-        sheet, [start[0], neck[0]], [start[1], neck[1]], color=color, linewidth=width_pt, solid_capstyle="butt"
+        sheet,
+        [start[0], neck[0]],
+        [start[1], neck[1]],
+        color=color,
+        linewidth=width_pt,
+        solid_capstyle="butt",
     )
     draw_arrow_head(sheet, end, away, head, color)

@@ -2,8 +2,8 @@
 
     python tests/benchmarks/bench_join.py [dates a side] [rounds]
 
-Earth–Venus–Mars, one thread. The plain rival solves each (departure, flyby, arrival) triple for its periapsis to
-1e-10 by Newton's method on asin + asin, then compares its cost, as one would write it first.
+Earth–Venus–Mars, one thread. The plain rival solves each (departure, flyby, arrival) triple for its periapsis
+to 1e-10 by Newton's method on asin + asin, then compares its cost, as one would write it first.
 """
 
 from __future__ import annotations
@@ -78,8 +78,8 @@ def main(dates: int = 300, rounds: int = 5) -> None:
                 np.full(m, -1, dtype=np.int32),
             )
             join(
-                legs.fields, legs.cost, legs.count, ends_out.fields, ends_out.cost, ends_out.leg, ends_out.count,
-                m, 0, values, best, came, by, tally,
+                legs.fields, legs.cost, legs.count, ends_out.fields, ends_out.cost, ends_out.leg,
+                ends_out.count, m, 0, values, best, came, by, tally,
             )  # fmt: skip
             answers[name][row] = best
         tallies[name] = tally
@@ -89,8 +89,8 @@ def main(dates: int = 300, rounds: int = 5) -> None:
         for row, legs in enumerate(departures):
             best, flyby = np.full(m, math.inf), np.full(m, -1, dtype=np.int64)
             plain_join(
-                legs.fields, legs.cost, legs.count, ends_out.fields, ends_out.cost, ends_out.leg, ends_out.count,
-                bounds.y_min, bounds.burn_max, best, flyby,
+                legs.fields, legs.cost, legs.count, ends_out.fields, ends_out.cost, ends_out.leg,
+                ends_out.count, bounds.y_min, bounds.burn_max, best, flyby,
             )  # fmt: skip
             answers["plain"][row] = best
 

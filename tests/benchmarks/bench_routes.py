@@ -3,9 +3,9 @@
     python tests/benchmarks/bench_routes.py
 
 Whole sweeps, warm, each a process of its own with all measures, ranking and charts: Earth–Venus–Mars on
-401 × 300 × 500 dates at one day, and Earth–Venus–Venus–Earth–Jupiter over two years of departures with burns up
-to 1 km/s; each as a ratio to a process that only imports numba, matplotlib and xarray and saves one empty figure.
-Then a table of the search alone: dates per encounter doubled, flybys one to four.
+400 × 300 × 500 dates at one day, and Earth–Venus–Venus–Earth–Jupiter over two years of departures with burns
+up to 1 km/s; each as a ratio to a process that only imports numba, matplotlib and xarray and saves one empty
+figure. Then a table of the search alone: dates per encounter doubled, flybys one to four.
 """
 
 from __future__ import annotations

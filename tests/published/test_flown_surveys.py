@@ -142,9 +142,7 @@ def test_one_of_the_ten_best_is_the_flight_that_flew(candidates, mission):
 def test_the_windows_hold_far_more_than_the_flight_that_flew(candidates, mission):
     """Else finding it would say nothing: no window is under a year, and the flight is deep inside each."""
     _, dates, _ = FLOWN[mission]
-    scenario_dates = [
-        (each.first, each.last) for each in load_scenario_of(candidates, mission).encounters
-    ]
+    scenario_dates = [(each.first, each.last) for each in load_scenario_of(candidates, mission).encounters]
     for (first, last), flown in zip(scenario_dates, dates, strict=True):
         assert (last - first).days >= 365
         assert (pd.Timestamp(flown) - pd.Timestamp(first)).days > 150

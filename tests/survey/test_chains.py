@@ -150,7 +150,9 @@ def folder(tmp_path_factory):
 
 @settings(max_examples=12, deadline=None)
 @given(burn=st.floats(0.3, 6.0), limits=LIMITS, max_revs=st.integers(0, 1))
-def test_a_route_with_one_flyby_is_the_best_of_all_flyby_dates_and_leg_options(folder, burn, limits, max_revs):
+def test_a_route_with_one_flyby_is_the_best_of_all_flyby_dates_and_leg_options(
+    folder, burn, limits, max_revs
+):
     plan = plan_of(folder, "EVM", 4, burn, limits, max_revs)
     agree(searched(plan).cost, enumerated(plan, burn, limits, lambda c3, dv, route: dv))
 
