@@ -52,15 +52,8 @@ def print_table(headings: Sequence[str], rows: Iterable[Sequence[str]], title: s
 
 def fitting(headings: Sequence[str], rows: Sequence[Sequence[str]], width: int) -> list[int]:
     """Which columns of a table fit side by side, the last one kept whatever happens; wide ones count whole."""
-    taken = [
-        max(
-            len(part)
-            for cell in (_broken(heading), *(row[index] for row in rows))
-            for part in cell.split("\n")
-        )
-        + 3
-        for index, heading in enumerate(headings)
-    ]
+    columns = zip(map(_broken, headings), *rows, strict=True)
+    taken = [3 + max(len(line) for cell in column for line in cell.split("\n")) for column in columns]
     last = len(headings) - 1
     room = width - taken[last]
     kept = []

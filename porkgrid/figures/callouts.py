@@ -57,15 +57,16 @@ def draw_callout(
     size_pt: float,
     color: str = INK,
     weight: str = "normal",
+    reach_in: float = _RADII_IN[-1],
 ) -> bool:
     """Write a label of one or more lines near one of its anchors, with a leader where it stands off.
 
     anchors: points that serve as well; the best place near any of them is taken. Only the first line has
-    the weight. Tells whether there was a place; without one nothing is drawn.
+    the weight. Tells whether there was a place within reach; without one nothing is drawn.
     """
     width = max(width_in(line, size_pt, weight if i == 0 else "normal") for i, line in enumerate(lines))
     height = line_height_in(size_pt) * (len(lines) - 1) + size_pt / 72.0
-    found = _best_place(drawing, anchors, width + 0.04, height + 0.04)
+    found = _best_place(drawing, anchors, width + 0.04, height + 0.04, reach_in)
     if found is None:
         return False
     anchor, box = found
@@ -85,12 +86,12 @@ def draw_callout(
 
 
 def _best_place(
-    drawing: Drawing, anchors: Sequence[tuple[float, float]], width: float, height: float
+    drawing: Drawing, anchors: Sequence[tuple[float, float]], width: float, height: float, reach_in: float
 ) -> tuple[tuple[float, float], Box] | None:
     """Find the free box with the least cost, and the anchor it belongs to."""
     best, least = None, np.inf
     for radius in _RADII_IN:
-        if _PER_INCH * radius >= least:
+        if radius > reach_in or _PER_INCH * radius >= least:
             break
         for anchor in anchors:
             for angle in _DIRECTIONS_RAD:

@@ -27,8 +27,8 @@ _POLE_BOX = Box(0.80, 0.98, 6.80, 6.20)
 _SIDE_BOX = Box(7.02, 0.98, 8.97, 6.20)
 _COLUMN = (9.38, 13.08, 6.34, 0.55)
 _NOTE = (
-    "Path about the Sun in the ecliptic and equinox of J2000: two-body arcs between encounters; "
-    "the orbits osculate the bodies' at their first encounter."
+    "Path about the Sun in the ecliptic and equinox of J2000: two-body arcs between encounters, "
+    "and the bodies' orbits as of their first encounter"
 )
 
 _X, _Y, _Z = range(3)
@@ -36,8 +36,11 @@ _ORBIT_INK = "#8b949e"
 _SUN_FACE = "#f2c230"
 _DOT_PT, _SUN_PT = 5.5, 8.0
 _ARROWS_APART_IN = 3.0
+_LEAST_TICKS, _MOST_TICKS = 3, 8
+_NEAR_IN = 0.15  # the Sun needs no name that is farther from it
 
 _CROP_FROM = 1.6  # how many times larger than the flight alone whole orbits may make the view
+_CROP_HEIGHTS_FROM = 2.5
 _MARGIN = 0.06
 _SIDE_MARGIN = 0.12
 _ENLARGEMENTS = (0.1, 0.2, 0.5, 1.0, 2.0, 5.0, 10.0, 20.0, 50.0, 100.0)
@@ -102,13 +105,14 @@ def _frame(scene: _Scene) -> tuple[np.ndarray, np.ndarray]:
 def _side_plane(scene: _Scene, pole: Plane) -> tuple[Plane, float]:
     """Return the plane of the side view, which shares y with the view from the pole, and its enlargement."""
     (x_low, x_high), (y_low, y_high) = pole.limits
-    heights = [0.0]
-    for path in [*scene.arcs, *(path for _, path in scene.orbits)]:
-        x, y, z = path
+    height = max(float(np.abs(path[_Z]).max()) for path in scene.arcs)
+    most = _CROP_HEIGHTS_FROM * height
+    for _, (x, y, z) in scene.orbits:
         seen = (x >= x_low) & (x <= x_high) & (y >= y_low) & (y <= y_high)
-        heights.append(float(np.abs(z[seen]).max(initial=0.0)))
+        orbit_height = float(np.abs(z[seen]).max(initial=0.0))
+        height = max(height, orbit_height if orbit_height <= most else 0.0)
     room = (0.5 - _SIDE_MARGIN) * (_SIDE_BOX.right - _SIDE_BOX.left)
-    fitting = [each for each in _ENLARGEMENTS if each * max(heights) * pole.y_scale <= room]
+    fitting = [each for each in _ENLARGEMENTS if each * height * pole.y_scale <= room]
     enlarged = fitting[-1] if fitting else _ENLARGEMENTS[0]
     return Plane(_SIDE_BOX, 0.0, pole.y0, enlarged * pole.y_scale, pole.y_scale), enlarged
 
@@ -116,7 +120,7 @@ def _side_plane(scene: _Scene, pole: Plane) -> tuple[Plane, float]:
 def _draw_from_the_pole(figure: Figure, sheet: Axes, scene: _Scene, plane: Plane) -> None:
     """Draw the main view, with every encounter named and dated."""
     axes = _axes_of(figure, plane)
-    _mark(axes, plane, plane.box.right - plane.box.left)
+    _mark(axes, plane)
     axes.set_xlabel("x (au)", fontsize=BODY_PT, labelpad=2.0)
     axes.set_ylabel("y (au)", fontsize=BODY_PT, labelpad=2.0)
     _caption(sheet, plane.box, "seen from the north pole of the ecliptic")
@@ -124,7 +128,7 @@ def _draw_from_the_pole(figure: Figure, sheet: Axes, scene: _Scene, plane: Plane
     drawing = _draw_lines(axes, sheet, scene, plane, (_X, _Y))
     for words, point in zip(scene.words, scene.points, strict=True):
         draw_callout(sheet, drawing, [plane.point(point[_X], point[_Y])], words, SMALL_PT, INK, "bold")
-    draw_callout(sheet, drawing, [plane.point(0.0, 0.0)], ["Sun"], SMALL_PT, SOFT_INK)
+    draw_callout(sheet, drawing, [plane.point(0.0, 0.0)], ["Sun"], SMALL_PT, SOFT_INK, reach_in=_NEAR_IN)
     for title, path in scene.orbits:
         _name_orbit(sheet, drawing.room, plane, title, path)
 
@@ -132,7 +136,7 @@ def _draw_from_the_pole(figure: Figure, sheet: Axes, scene: _Scene, plane: Plane
 def _draw_from_the_side(figure: Figure, sheet: Axes, scene: _Scene, plane: Plane, enlarged: float) -> None:
     """Draw the view along x, encounters by number."""
     axes = _axes_of(figure, plane)
-    _mark(axes, plane, plane.box.right - plane.box.left)
+    _mark(axes, plane)
     axes.set_yticklabels([])
     times = "" if enlarged == 1.0 else f"{enlarged:g} × "
     axes.set_xlabel(f"z (au), {times}the scale of y", fontsize=BODY_PT, labelpad=2.0)
@@ -195,15 +199,14 @@ def _draw_line(axes: Axes, drawing: Drawing, plane: Plane, line: np.ndarray, **s
 def _draw_direction(sheet: Axes, line: np.ndarray, color: str) -> None:
     """Put arrow heads along a line (k, 2) in inches, in the direction of flight."""
     along = np.concatenate(([0.0], np.cumsum(np.hypot(*np.diff(line, axis=0).T))))
-    if along[-1] < 2.0 * ARROW_IN:
-        return
+    head = min(ARROW_IN, 0.2 * along[-1])
     count = max(1, round(along[-1] / _ARROWS_APART_IN))
     for middle in (np.arange(count) + 0.5) / count * along[-1]:
         tail, tip = (
             np.array([np.interp(at, along, side) for side in line.T])
-            for at in (middle - 0.5 * ARROW_IN, middle + 0.5 * ARROW_IN)
+            for at in (middle - 0.5 * head, middle + 0.5 * head)
         )
-        draw_arrow_head(sheet, tip, tip - tail, ARROW_IN, color)
+        draw_arrow_head(sheet, tip, tip - tail, head, color)
 
 
 def _name_orbit(sheet: Axes, room: Room, plane: Plane, title: str, path: np.ndarray) -> None:

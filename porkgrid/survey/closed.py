@@ -2,9 +2,14 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 
+from porkgrid.survey.flybyroutes import flyby_cells
 from porkgrid.survey.limits import REASONS, Bound
+from porkgrid.survey.measures import FLYBY
+from porkgrid.survey.plan import Plan
 from porkgrid.survey.store import BLOCKED_BY
 from porkgrid.survey.surveys import Survey
 from porkgrid.survey.view import flag_shares, row_bands
@@ -21,8 +26,27 @@ def explain_closed(survey: Survey) -> list[str]:
     limits = [share for share in flag_shares(survey) if share.title not in REASONS.values()]
     worst = max(limits, key=lambda share: share.share)
     lines.append(f"Most costly: {worst.title}, which forbids {100 * worst.share:.1f} % of the grid.")
+    if survey.plan.flybys:
+        openers = [line for bound in survey.plan.bounds if (line := _would_open_a_route(survey.plan, bound))]
+        return lines + (openers or ["No single limit opens a cell: give two of them more room."])
     openers = [line for bound in survey.plan.bounds if (line := _would_open(survey, bound))]
     return lines + (openers or [_nearest_cell(survey)])
+
+
+def _would_open_a_route(plan: Plan, bound: Bound) -> str | None:
+    """A value of one limit at which a route with flybys passes: that of the best one found without the limit.
+
+    Any route found so keeps all other limits. A tighter value may do as well: the search makes least what is
+    ranked, not the excess.
+    """
+    if bound.measure.name.endswith("_altitude_km") and bound.measure.scope == FLYBY:
+        return None  # nobody should fly lower for it
+    without = replace(plan, bounds=tuple(each for each in plan.bounds if each != bound))
+    cells, blocked = flyby_cells(without, without.search, without.tables[0])
+    values = np.broadcast_to(bound.measure.compute(cells), blocked.shape)
+    excess = np.where(blocked == 0, bound.excess(values), np.inf)
+    where = np.unravel_index(np.argmin(excess), excess.shape)
+    return _opening(bound, float(values[where])) if np.isfinite(excess[where]) else None
 
 
 def _would_open(survey: Survey, bound: Bound) -> str | None:
@@ -34,8 +58,10 @@ def _would_open(survey: Survey, bound: Bound) -> str | None:
         where = np.unravel_index(np.argmin(excess), excess.shape)
         if excess[where] < least:
             least, value = float(excess[where]), float(values[where])
-    if not np.isfinite(least):
-        return None
+    return _opening(bound, value) if np.isfinite(least) else None
+
+
+def _opening(bound: Bound, value: float) -> str:
     end = "min" if bound.least is not None and value < bound.least else "max"
     opening = f"{_beyond(value, end):g} {bound.measure.unit}"
     return f"The first cell opens with {bound.measure.name} {end} = {opening}."

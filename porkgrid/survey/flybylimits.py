@@ -10,7 +10,7 @@ from porkgrid.errors import RequestError
 from porkgrid.scenario import Scenario
 from porkgrid.sky.bodies import Body
 from porkgrid.survey.chains import memory_bytes
-from porkgrid.survey.limits import Bound
+from porkgrid.survey.limits import BITS, REASONS, Bound
 from porkgrid.survey.measures import EVERY_LEG, FLYBY, SUM, Measure
 
 if TYPE_CHECKING:
@@ -45,7 +45,13 @@ def _tighter(a: Bound, b: Bound) -> Bound:
 
 def refuse_unsearchable(plan: Plan) -> None:
     """Raise RequestError with everything in a scenario with flybys that a search cannot honour exactly."""
-    faults = [*_rank_faults(plan), *_limit_faults(plan), *_burn_faults(plan), *_memory_faults(plan)]
+    faults = [
+        *_rank_faults(plan),
+        *_limit_faults(plan),
+        *_burn_faults(plan),
+        *_count_faults(plan),
+        *_memory_faults(plan),
+    ]
     if faults:
         raise RequestError(*(f"{plan.scenario.path}: {fault}" for fault in faults))
 
@@ -83,6 +89,16 @@ def _burn_faults(plan: Plan) -> Iterator[str]:
                 f"encounter {bound.measure.number + 1}, flyby, max_burn_km_s: on a grid of dates no "
                 "unpowered flyby matches exactly, so 0 allows none; give what it may miss by, such as 0.2"
             )
+
+
+def _count_faults(plan: Plan) -> Iterator[str]:
+    most = BITS - len(REASONS)
+    if len(plan.bounds) > most:
+        own = len(plan.bounds) - len(plan.scenario.limits)
+        yield (
+            f"limits: {len(plan.scenario.limits)} limits with {own} of the flybys' own are more than the "
+            f"{most} that a cell can tell apart; leave out {len(plan.bounds) - most}"
+        )
 
 
 def _memory_faults(plan: Plan) -> Iterator[str]:

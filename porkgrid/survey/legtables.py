@@ -47,7 +47,7 @@ class LegTable:
 def leg_table(plan: Plan, number: int, departure: StateTable, arrival: StateTable) -> LegTable:
     """Fly leg `number` (from 1) between two tables and apply what concerns this leg alone."""
     shape = (len(departure.jd), len(arrival.jd))
-    solved = [solve_leg(departure, arrival, option) for option in plan.options[number - 1]]
+    solved = _solved(plan, number, departure, arrival)
     failed = np.full((len(solved), *shape), PASSED, dtype=np.int8)
     cost, dv = np.zeros(failed.shape), np.zeros(failed.shape)
     for o, leg in enumerate(solved):
@@ -57,6 +57,18 @@ def leg_table(plan: Plan, number: int, departure: StateTable, arrival: StateTabl
         if "dv_total_km_s" in plan.measures:
             dv[o] = _share(plan, plan.measures["dv_total_km_s"], number, cells, shape)
     return LegTable(solved, failed, cost, dv)
+
+
+def _solved(plan: Plan, number: int, departure: StateTable, arrival: StateTable) -> list[LegCells]:
+    """The leg's options, flown once for all legs between the same dates of the same bodies."""
+    ends = ((table.body.name, table.jd.tobytes()) for table in (departure, arrival))
+    key = (*ends, plan.options[number - 1])
+    if number == 1 or key not in plan.flown:
+        solved = [solve_leg(departure, arrival, option) for option in plan.options[number - 1]]
+        if number == 1:
+            return solved  # of one tile, which nobody else flies
+        plan.flown[key] = solved
+    return plan.flown[key]
 
 
 def concerns(measure: Measure, number: int, legs: int) -> bool:

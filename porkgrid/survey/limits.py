@@ -24,6 +24,9 @@ REASONS = {
 REASON_OF_STATUS = {NOT_AFTER: 0, NO_PLANE: 1, NO_TRANSFER: 2, BAD_INPUT: 2}
 
 
+BITS = 32  # of the word
+
+
 @dataclass(frozen=True)
 class Bound:
     """A limit on one measure; either end may be open."""

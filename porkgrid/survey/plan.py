@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from functools import cached_property
 from itertools import pairwise
 
@@ -58,6 +58,7 @@ class Plan:
     rank_sign: float  # +1: less is better; −1: more is better
     objective: Measure  # what a search for flyby dates makes least, with its own sign
     objective_sign: float
+    flown: dict = field(default_factory=dict)  # legs that are the same fly once: legtables
 
     @property
     def shape(self) -> tuple[int, int]:

@@ -94,10 +94,10 @@ def _begin(folder: Path, plan: Plan) -> dict[str, Any]:
 def _fill(folder: Path, plan: Plan, workers: int, report: Callable[[Progress], None] | None) -> None:
     """Compute and write the tiles that are missing, on a pool of threads."""
     arrays = open_arrays(folder)
-    if plan.flybys:
-        _ = plan.search  # made once, before the threads share it
     entries = read_ledger(folder)
     missing = [tile for tile in plan.tiles if tile.number not in entries]
+    if plan.flybys and missing:
+        _ = plan.search  # made once, before the threads share it
     stop = threading.Event()
     lock = threading.Lock()
     with open_ledger(folder) as ledger:

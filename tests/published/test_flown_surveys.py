@@ -1,8 +1,8 @@
-"""Given windows of more than a year round every encounter, a survey's ten best hold the mission that flew.
+"""Given windows of more than a year for every encounter, a survey's ten best hold the mission that flew.
 
-Nothing in a scenario knows the dates: windows are round, steps are a small part of what the dates may be off
-by, limits and ranking are what an analyst of the time would have written down first. The encounter dates
-(UTC) are those of the agencies' mission pages; a TDB calendar day is near enough here.
+Nothing in a scenario knows the dates: windows are round, limits and ranking are what an analyst would have
+written down first. The encounter dates (UTC) and radii are those of the agencies' mission pages; UTC and the TDB
+of the tables are a minute apart.
 """
 
 import numpy as np
@@ -14,47 +14,49 @@ from porkgrid.survey.admit import load_scenario
 from porkgrid.survey.folder import CANDIDATES
 from porkgrid.survey.sweep import sweep
 
-# Ranked by C3, because a flyby mission of this kind carries next to no propellant: the launcher's energy is what
-# it costs. 25 km²/s² is what an Atlas-Centaur gave a spacecraft of half a ton (practice). 250 days are a bound on
-# operations, twice the Hohmann time to Venus; the flyby may carry the mismatch of the grid by default. Ten days
-# apart and the nearer one is the same window: the tool's own default.
+# Two and a half years of each planet, three days a step. Ranked by total Δv from a low orbit: the launch, and
+# what the flyby lacks of being free. Limits bound what is hopeless rather than what is best: 40 km²/s² is twice
+# what a good Venus season with its flyby asks for, a year is two and a half Hohmann flights to Venus. The burn
+# is bounded at the default, 0.2 km/s. Ten days apart in every date, as by default, is another window.
 MARINER_10 = """
 name = "Earth, Venus, Mercury, 1973"
+measures = ["c3_km2_s2", "v_inf_arrival_km_s"]
 
 [[encounter]]
 body = "earth"
-first = 1973-03-01
-last = 1974-06-30
-step_days = 2.0
+first = 1972-07-01
+last = 1974-12-31
+step_days = 3.0
+parking = { periapsis_altitude_km = 185, apoapsis_altitude_km = 185 }
 
 [[encounter]]
 body = "venus"
-first = 1973-06-01
-last = 1974-10-31
-step_days = 2.0
+first = 1972-10-01
+last = 1975-06-30
+step_days = 3.0
 
 [[encounter]]
 body = "mercury"
-first = 1973-09-01
-last = 1975-03-31
-step_days = 2.0
+first = 1973-01-01
+last = 1975-12-31
+step_days = 3.0
 
 [limits]
-c3_km2_s2 = { max = 25 }
-tof_days = { max = 250 }
+c3_km2_s2 = { max = 40 }
+tof_days = { max = 365 }
 
 [rank]
-by = "c3_km2_s2"
+by = "dv_total_km_s"
 keep = 10
 """
 
-# Ranked by total Δv: the launch, and what the flybys lack of being free. 110 km²/s² is what a Titan IIIE-Centaur
-# with a kick stage gave 800 kg (practice). 13 years are a bound on what can be hoped for of the hardware: the
-# direct way to Neptune on a Hohmann ellipse takes 30. Burns are bounded at the default, 0.2 km/s for each
-# flyby. Steps grow outwards as the planets slow down. Twenty days apart, because windows with a dozen
-# years of flight differ by weeks.
+# A year and a half or more of each planet, steps that grow outwards as the planets slow down. Ranked by total
+# Δv, as above. 110 km²/s² is what a Titan IIIE-Centaur with a kick stage gave 800 kg (practice). 13 years bound
+# what can be hoped for of the hardware; a Hohmann flight to Neptune takes 30. Burns are bounded at the
+# default, 0.2 km/s each. Twenty days apart, because windows with a dozen years of flight differ by weeks.
 VOYAGER_2 = """
 name = "Earth, Jupiter, Saturn, Uranus, Neptune, 1977"
+measures = ["c3_km2_s2", "v_inf_arrival_km_s"]
 
 [[encounter]]
 body = "earth"
@@ -139,14 +141,14 @@ def test_one_of_the_ten_best_is_the_flight_that_flew(candidates, mission):
 
 
 @pytest.mark.parametrize("mission", FLOWN)
-def test_the_windows_hold_far_more_than_the_flight_that_flew(candidates, mission):
-    """Else finding it would say nothing: no window is under a year, and the flight is deep inside each."""
-    _, dates, _ = FLOWN[mission]
-    scenario_dates = [(each.first, each.last) for each in load_scenario_of(candidates, mission).encounters]
-    for (first, last), flown in zip(scenario_dates, dates, strict=True):
-        assert (last - first).days >= 365
-        assert (pd.Timestamp(flown) - pd.Timestamp(first)).days > 150
-        assert (pd.Timestamp(last) - pd.Timestamp(flown)).days > 150
+def test_no_window_is_drawn_round_the_date_that_was_flown(tmp_path, mission):
+    """Else finding it would say nothing: each is over a year, and begins and ends months away."""
+    text, dates, _ = FLOWN[mission]
+    windows = load_scenario(written(tmp_path, text)).encounters
+    for window, flown in zip(windows, pd.to_datetime(list(dates)), strict=True):
+        first, last = pd.Timestamp(window.first), pd.Timestamp(window.last)
+        assert last - first > pd.Timedelta(days=365)
+        assert min(flown - first, last - flown) > pd.Timedelta(days=150)
 
 
 def test_the_candidate_that_flew_passes_the_planets_as_the_mission_did(candidates):
