@@ -12,7 +12,7 @@ import numpy as np
 from matplotlib.axes import Axes
 from matplotlib.patheffects import withStroke
 
-from porkgrid.figures.marks import add_segments
+from porkgrid.figures.marks import add_line
 from porkgrid.figures.placement import Box, Room
 from porkgrid.figures.style import INK, SOFT_INK
 from porkgrid.figures.text import line_height_in, put, width_in
@@ -20,7 +20,9 @@ from porkgrid.figures.text import line_height_in, put, width_in
 _RADII_IN = (0.09, 0.14, 0.22, 0.34, 0.50, 0.70, 0.95, 1.25, 1.6, 2.0)
 _DIRECTIONS_RAD = np.radians(np.arange(0.0, 360.0, 15.0))
 _SAMPLE_IN = 0.03  # between the points that stand for a line
-_PER_SAMPLE, _PER_INCH = 0.06, 1.0  # what a hidden piece of line, and distance, count
+_PER_INCH, _PER_HIDDEN, _PER_CROSSED = 1.0, 0.06, 0.1  # what distance and pieces of line count
+_CROSSED_IN = 0.03
+_PAD_IN = 0.03  # around the text
 _LEADER_FROM_IN = 0.16
 _LEADER_CLEARANCE_IN = 0.07  # of its end from the point
 
@@ -35,9 +37,9 @@ class Drawing:
     room: Room
     ink: np.ndarray = field(default_factory=lambda: np.empty((0, 2)))
 
-    def add_line(self, x: np.ndarray, y: np.ndarray) -> None:
-        """Note a line through points."""
-        self.ink = np.concatenate([self.ink, _sampled(np.column_stack([x, y]))])
+    def add_line(self, line: np.ndarray, weight: int = 1) -> None:
+        """Note a line through points (k, 2); to hide one of more weight costs more."""
+        self.ink = np.concatenate([self.ink, *[_sampled(line)] * weight])
 
     def keep_clear(self, x: float, y: float, radius: float) -> None:
         """Take a square for a mark, whatever else stands there."""
@@ -66,7 +68,7 @@ def draw_callout(
     """
     width = max(width_in(line, size_pt, weight if i == 0 else "normal") for i, line in enumerate(lines))
     height = line_height_in(size_pt) * (len(lines) - 1) + size_pt / 72.0
-    found = _best_place(drawing, anchors, width + 0.04, height + 0.04, reach_in)
+    found = _best_place(drawing, anchors, width + 2.0 * _PAD_IN, height + 2.0 * _PAD_IN, reach_in)
     if found is None:
         return False
     anchor, box = found
@@ -75,11 +77,11 @@ def draw_callout(
     _draw_leader(sheet, drawing, anchor, box)
     middle = 0.5 * (box.left + box.right)
     to_the_right = middle > anchor[0]
-    x, ha = (box.left + 0.02, "left") if to_the_right else (box.right - 0.02, "right")
+    x, ha = (box.left + _PAD_IN, "left") if to_the_right else (box.right - _PAD_IN, "right")
     if abs(middle - anchor[0]) < 0.25 * width:
         x, ha = middle, "center"
     for i, line in enumerate(lines):
-        y = box.top - 0.02 - 0.80 * size_pt / 72.0 - i * line_height_in(size_pt)
+        y = box.top - _PAD_IN - 0.80 * size_pt / 72.0 - i * line_height_in(size_pt)
         look = {"color": color, "weight": weight if i == 0 else "normal", "path_effects": halo}
         put(sheet, x, y, line, size_pt, ha=ha, **look)
     return True
@@ -98,8 +100,11 @@ def _best_place(
                 box = _box_beyond(anchor, radius, float(angle), width, height)
                 if not _is_free(drawing.room, box):
                     continue
-                cost = _PER_INCH * radius + _PER_SAMPLE * drawing.hidden(box)
-                if cost < least and not _leader_meets(drawing.room, anchor, box):
+                cost = _PER_INCH * radius + _PER_HIDDEN * drawing.hidden(box)
+                if cost >= least or _leader_meets(drawing.room, anchor, box):
+                    continue
+                cost += _PER_CROSSED * _crossed_by_leader(drawing, anchor, box)
+                if cost < least:
                     best, least = (anchor, box), cost
     return best
 
@@ -142,11 +147,21 @@ def _leader_meets(room: Room, anchor: tuple[float, float], box: Box) -> bool:
     )
 
 
+def _crossed_by_leader(drawing: Drawing, anchor: tuple[float, float], box: Box) -> int:
+    """Count the samples of lines on the leader, if the box has one; those at its own point do not count."""
+    leader = _leader(anchor, box)
+    if leader is None or not len(drawing.ink):
+        return 0
+    ink = drawing.ink[np.hypot(*(drawing.ink - np.asarray(anchor)).T) > _LEADER_CLEARANCE_IN]
+    apart = ink[:, None, :] - _sampled(leader)[None, :, :]
+    return int(np.count_nonzero((np.hypot(apart[..., 0], apart[..., 1]) < _CROSSED_IN).any(axis=1)))
+
+
 def _draw_leader(sheet: Axes, drawing: Drawing, anchor: tuple[float, float], box: Box) -> None:
     leader = _leader(anchor, box)
     if leader is not None:
-        add_segments(sheet, [leader], colors=SOFT_INK, linewidths=0.6)
-        drawing.add_line(*leader.T)
+        add_line(sheet, *leader.T, color=SOFT_INK, linewidth=0.6)
+        drawing.add_line(leader)
 
 
 def _sampled(line: np.ndarray) -> np.ndarray:

@@ -6,7 +6,7 @@ from collections.abc import Sequence
 
 from porkgrid.figures.key import Column
 from porkgrid.figures.numbers import ROW_IN, Pair, draw_list, draw_pairs, number_text, pair
-from porkgrid.figures.style import BODY_PT, SMALL_PT, SOFT_INK
+from porkgrid.figures.style import BODY_PT, SMALL_PT
 from porkgrid.figures.text import line_height_in, put
 from porkgrid.survey.pictures import ArcPicture, EncounterPicture, Number, RoutePicture
 

@@ -36,6 +36,7 @@ _ORBIT_INK = "#8b949e"
 _SUN_FACE = "#f2c230"
 _DOT_PT, _SUN_PT = 5.5, 8.0
 _ARROWS_APART_IN = 3.0
+_ARC_WEIGHT = 3  # to labels, which should rather hide an orbit than an arc
 _LEAST_TICKS, _MOST_TICKS = 3, 8
 _NEAR_IN = 0.15  # the Sun needs no name that is farther from it
 
@@ -155,12 +156,14 @@ def _axes_of(figure: Figure, plane: Plane) -> Axes:
     return axes
 
 
-def _mark(axes: Axes, plane: Plane, width_in_: float) -> None:
-    """Put round distances on both axes."""
-    for axis, limits, most in zip(
-        (axes.xaxis, axes.yaxis), plane.limits, (max(3, int(width_in_)), 6), strict=True
-    ):
-        ticks, texts = Numbers(1.0).ticks(*limits, most)
+def _mark(axes: Axes, plane: Plane) -> None:
+    """Put round distances on both axes, about one an inch, three at least."""
+    lengths = plane.box.right - plane.box.left, plane.box.top - plane.box.bottom
+    for axis, limits, length in zip((axes.xaxis, axes.yaxis), plane.limits, lengths, strict=True):
+        for most in range(max(3, round(length)), _MOST_TICKS + 1):
+            ticks, texts = Numbers(1.0).ticks(*limits, most)
+            if len(ticks) >= _LEAST_TICKS:
+                break
         axis.set_ticks(ticks, labels=texts)
 
 
@@ -175,10 +178,10 @@ def _draw_lines(axes: Axes, sheet: Axes, scene: _Scene, plane: Plane, sides: tup
     """
     drawing = Drawing(Room(plane.box))
     for _, path in scene.orbits:
-        _draw_line(axes, drawing, plane, path[list(sides)], color=_ORBIT_INK, linewidth=0.8)
+        _draw_line(axes, drawing, plane, path[list(sides)], 1, color=_ORBIT_INK, linewidth=0.8)
     for k, path in enumerate(scene.arcs):
         color = LEG_COLOURS[k % len(LEG_COLOURS)]
-        _draw_line(axes, drawing, plane, path[list(sides)], color=color, linewidth=1.7)
+        _draw_line(axes, drawing, plane, path[list(sides)], _ARC_WEIGHT, color=color, linewidth=1.7)
         _draw_direction(sheet, np.column_stack(plane.at(*path[list(sides)])), color)
     round_mark = {"linestyle": "", "marker": "o", "markeredgecolor": INK, "markeredgewidth": 0.6}
     add_line(axes, [0.0], [0.0], color=_SUN_FACE, markersize=_SUN_PT, **round_mark)
@@ -190,10 +193,12 @@ def _draw_lines(axes: Axes, sheet: Axes, scene: _Scene, plane: Plane, sides: tup
     return drawing
 
 
-def _draw_line(axes: Axes, drawing: Drawing, plane: Plane, line: np.ndarray, **style: object) -> None:
+def _draw_line(
+    axes: Axes, drawing: Drawing, plane: Plane, line: np.ndarray, weight: int, **style: object
+) -> None:
     add_line(axes, line[0], line[1], solid_joinstyle="round", **style)
     for piece in inside_pieces(plane.box, np.column_stack(plane.at(*line))):
-        drawing.add_line(*piece.T)
+        drawing.add_line(piece, weight)
 
 
 def _draw_direction(sheet: Axes, line: np.ndarray, color: str) -> None:

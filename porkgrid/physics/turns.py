@@ -16,17 +16,10 @@ import math
 
 from numba import njit
 
-from porkgrid.physics.timeflight import ROW
+from porkgrid.physics.timeflight import PLAIN, ROW
 
 # Under this sine of half the turn, y is past any distance at which patched conics mean something.
 _LEAST_SINE = 1e-9
-
-
-@njit(**ROW, inline="always")
-def half_turn(v2y):
-    """Sine and cosine of the half-turn of a hyperbola with v∞² r_p/GM = v2y."""
-    s = 1.0 / (1.0 + v2y)
-    return s, math.sqrt(v2y * (2.0 + v2y)) * s
 
 
 @njit(**ROW, inline="always")
@@ -38,26 +31,38 @@ def periapsis_start(a2, b2, per_sine):
 @njit(**ROW, inline="always")
 def periapsis_step(a2, b2, per_sine, y):
     """One Newton step on y."""
-    s1, c1 = half_turn(a2 * y)
-    s2, c2 = half_turn(b2 * y)
-    cosine = c1 * c2 - s1 * s2
-    sine_half = math.sqrt(max(0.5 - 0.5 * cosine, _LEAST_SINE * _LEAST_SINE))
-    cosine_half = math.sqrt(max(0.5 + 0.5 * cosine, 0.0))
-    # −dδ/dy = a² s₁²/c₁ + b² s₂²/c₂
-    fall = (a2 * s1 * s1 * c2 + b2 * s2 * s2 * c1) / (c1 * c2)
-    miss = sine_half * per_sine - 1.0
-    new = y + 2.0 * sine_half * miss / (fall * cosine_half)
+    x1, x2 = a2 * y, b2 * y
+    r = 1.0 / ((1.0 + x1) * (1.0 + x2))
+    s1, s2 = r * (1.0 + x2), r * (1.0 + x1)
+    c1, c2 = math.sqrt(x1 * (2.0 + x1)) * s1, math.sqrt(x2 * (2.0 + x2)) * s2
+    sine2_half = max(0.5 - 0.5 * (c1 * c2 - s1 * s2), _LEAST_SINE * _LEAST_SINE)
+    miss = math.sqrt(sine2_half) * per_sine - 1.0
+    # −dδ/dy = fall/(c₁c₂); the derivative of 1/sin(δ/2) by δ is −sin δ/(4 sin³(δ/2))
+    fall = a2 * s1 * s1 * c2 + b2 * s2 * s2 * c1
+    new = y + 4.0 * sine2_half * miss * c1 * c2 / (fall * (s1 * c2 + c1 * s2))
     return max(new, 0.1 * y)
 
 
 @njit(**ROW, inline="always")
 def periapsis(a2, b2, cosine):
-    """y = r_p/GM of the flyby that turns by δ, given cos δ; settled for speeds within a factor of 2."""
+    """y = r_p/GM of the flyby that turns by δ, given cos δ; settled for speeds within a factor of 3."""
     per_sine = 1.0 / math.sqrt(max(0.5 - 0.5 * cosine, _LEAST_SINE * _LEAST_SINE))
     y = periapsis_start(a2, b2, per_sine)
     y = periapsis_step(a2, b2, per_sine, y)
     y = periapsis_step(a2, b2, per_sine, y)
     return periapsis_step(a2, b2, per_sine, y)
+
+
+@njit(**PLAIN)
+def periapsis_far(a2, b2, cosine, y):
+    """The same for speeds that differ more, from what `periapsis` made of it: steps until they are lost."""
+    per_sine = 1.0 / math.sqrt(max(0.5 - 0.5 * cosine, _LEAST_SINE * _LEAST_SINE))
+    for _ in range(60):
+        new = periapsis_step(a2, b2, per_sine, y)
+        if abs(new - y) < 1e-12 * y:
+            break
+        y = new
+    return y
 
 
 @njit(**ROW, inline="always")

@@ -19,7 +19,7 @@ import numpy as np
 
 from porkgrid.sky.bodies import gm_of, radius_of
 from porkgrid.sky.states import StateTable
-from porkgrid.survey.joins import FIELDS, FlybyBounds, LegEnds, join, leg_ends
+from porkgrid.survey.joins import FIELDS, FlybyBounds, LegEnds, join, leg_ends, turns
 from porkgrid.survey.legtables import PASSED, LegTable, ends_failed, leg_table
 from porkgrid.survey.measures import FLYBY, SUM
 
@@ -138,7 +138,9 @@ def _from_one_date(
             m if last else legs, stride, search.bounds[k], best, from_leg, by_leg, tally,
         )  # fmt: skip
         best[from_leg < 0] = math.inf
-        burnt[k] = tally[1] > 0
+        burnt[k] = tally[1] > 0 or turns(
+            ends.fields, cost_in, ends.count, out.fields, out.count, search.bounds[k]
+        )
         trail.append((ends, from_leg, by_leg))
         if stuck == 0 and not (from_leg >= 0).any():
             stuck = k + 1

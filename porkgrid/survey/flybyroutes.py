@@ -10,7 +10,7 @@ from numba import njit
 
 from porkgrid.physics.lambert import FLOWN, NO_TRANSFER
 from porkgrid.physics.timeflight import PLAIN
-from porkgrid.physics.turns import burn_at, periapsis
+from porkgrid.physics.turns import burn_at, periapsis, periapsis_far
 from porkgrid.sky.states import StateTable
 from porkgrid.survey.cells import Cells, FlybyCells
 from porkgrid.survey.chains import Choice, Search, flyby_bounds, search_block
@@ -145,7 +145,7 @@ def _failed_at_flyby(a, b, body, dv, bounds):
     a2 = a[0] * a[0] + a[1] * a[1] + a[2] * a[2]
     b2 = b[0] * b[0] + b[1] * b[1] + b[2] * b[2]
     cosine = (a[0] * b[0] + a[1] * b[1] + a[2] * b[2]) / math.sqrt(a2 * b2)
-    y = periapsis(a2, b2, cosine)
+    y = periapsis_far(a2, b2, cosine, periapsis(a2, b2, cosine))
     burn = burn_at(a2, b2, y)
     before, after = a + body, b + body
     gain = math.sqrt(np.dot(after, after)) - math.sqrt(np.dot(before, before))
@@ -167,18 +167,25 @@ def _blame_chain(
     flybys = len(search.out)
     at_last = np.where(choice.burnt[:, -1], _flyby_bit(plan, flybys, True), _flyby_bit(plan, flybys, False))
     bit = np.broadcast_to(at_last[:, None], (n, m)).astype(np.int32)
+    ends = ends_failed(plan, departure.jd, plan.tables[-1].jd)
+    bit = np.where(ends != PASSED, ends, bit)
     into = search.tables[-1].failed
     closed_into = (into != PASSED).all(axis=(0, 1))
     bit = np.where(closed_into[None, :], _furthest(into, (0, 1))[None, :], bit)
-    ends = ends_failed(plan, departure.jd, plan.tables[-1].jd)
-    bit = np.where(ends != PASSED, ends, bit)
-    for i in np.flatnonzero(choice.stuck):
-        bit[i] = _flyby_bit(plan, int(choice.stuck[i]), bool(choice.burnt[i, choice.stuck[i] - 1]))
+    for i in np.flatnonzero((choice.stuck > 0) & (choice.stuck < flybys)):
+        number = int(choice.stuck[i])
+        out = search.tables[number - 1].failed
+        nothing_leaves = bool((out != PASSED).all())
+        bit[i] = (
+            _furthest(out, (0, 1, 2))
+            if nothing_leaves
+            else _flyby_bit(plan, number, bool(choice.burnt[i, number - 1]))
+        )
     never_leaves = (first.failed != PASSED).all(axis=(0, 2))
     return np.where(never_leaves[:, None], _furthest(first.failed, (0, 2))[:, None], bit)
 
 
-def _furthest(failed: np.ndarray, axes: tuple[int, int]) -> np.ndarray:
+def _furthest(failed: np.ndarray, axes: tuple[int, ...]) -> np.ndarray:
     return np.where(failed == PASSED, 0, failed).max(axis=axes)
 
 

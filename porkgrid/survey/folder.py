@@ -129,4 +129,3 @@ def _clear(folder: Path) -> None:
             shutil.rmtree(path)
         else:
             path.unlink(missing_ok=True)
-        path.with_name(name + PART).unlink(missing_ok=True)

@@ -14,7 +14,7 @@ import numpy as np
 from numba import njit
 
 from porkgrid.physics.timeflight import PLAIN, ROW
-from porkgrid.physics.turns import burn_at, periapsis
+from porkgrid.physics.turns import burn_at, periapsis, periapsis_far
 
 # Rows of `LegEnds.fields`: unit vector of v∞, v∞², w, sine and cosine of the half-turn at the lowest
 # periapsis, heliocentric speed, share of the Δv
@@ -101,11 +101,29 @@ def _screen(inward, p, cost_in, outward, cost_out, lo, hi, c_min, c_max, weight,
 
 
 @njit(**ROW)
-def _burns(a2, b2, cosine, y, burn):
-    """Periapsis and burn of every pair."""
+def _burns(a2, b2, cosine, y_min, y_max, burn_max, burn):
+    """Burn of every pair; infinite where it or the periapsis is outside its bounds."""
+    far = 0
     for k in range(a2.shape[0]):
-        y[k] = periapsis(a2[k], b2[k], cosine[k])
-        burn[k] = burn_at(a2[k], b2[k], y[k])
+        y = periapsis(a2[k], b2[k], cosine[k])
+        spent = burn_at(a2[k], b2[k], y)
+        burn[k] = spent if (y_min <= y) & (y <= y_max) & (spent <= burn_max) else math.inf
+        far += 1 if (a2[k] > 9.0 * b2[k]) | (b2[k] > 9.0 * a2[k]) else 0
+    if far == 0:
+        return
+    for k in range(a2.shape[0]):
+        if a2[k] > 9.0 * b2[k] or b2[k] > 9.0 * a2[k]:
+            y = periapsis_far(a2[k], b2[k], cosine[k], periapsis(a2[k], b2[k], cosine[k]))
+            spent = burn_at(a2[k], b2[k], y)
+            burn[k] = spent if y_min <= y <= y_max and spent <= burn_max else math.inf
+
+
+@njit(**PLAIN)
+def _column(leg, columns):
+    """leg % columns, for the few options that a leg has; a division would cost more than the burn."""
+    while leg >= columns:
+        leg -= columns
+    return leg
 
 
 @njit(**PLAIN)
@@ -139,7 +157,7 @@ def join(
     k_in, k_out = in_fields.shape[2], out_fields.shape[2]
     cosine, least = np.empty(k_out), np.empty(k_out)
     a2, b2, c = np.empty(k_out), np.empty(k_out), np.empty(k_out)
-    y, burn, place = np.empty(k_out), np.empty(k_out), np.empty(k_out, dtype=np.int64)
+    burn, place = np.empty(k_out), np.empty(k_out, dtype=np.int64)
     for j in range(in_fields.shape[0]):
         inward, outward, cost_out = in_fields[j], out_fields[j], out_cost[j]
         count = out_count[j]
@@ -156,27 +174,44 @@ def join(
             _screen(inward, p, cost_in, outward, cost_out, lo, hi, c_min, c_max, weight, slack, cosine, least)
             kept = 0
             for e in range(lo, hi):
-                if least[e] < best[j * stride + out_leg[j, e] % columns]:
+                if least[e] < best[j * stride + _column(out_leg[j, e], columns)]:
                     place[kept] = e
                     a2[kept], b2[kept], c[kept] = inward[V2, p], outward[V2, e], cosine[e]
                     kept += 1
                 elif least[e] == math.inf:
                     tally[0] += 1
-            _burns(a2[:kept], b2[:kept], c[:kept], y[:kept], burn[:kept])
+            _burns(a2[:kept], b2[:kept], c[:kept], y_min, y_max, burn_max, burn[:kept])
             tally[1] += kept
             for k in range(kept):
+                if burn[k] == math.inf:
+                    continue
                 e = place[k]
                 gain = outward[SPEED, e] - inward[SPEED, p]
                 dv = inward[DV, p] + outward[DV, e] + burn[k]
-                if not (
-                    y_min <= y[k] <= y_max and burn[k] <= burn_max and c_min <= c[k] <= c_max
-                    and gain_min <= gain <= gain_max and dv <= dv_max
-                ):  # fmt: skip
+                if not (c_min <= c[k] <= c_max and gain_min <= gain <= gain_max and dv <= dv_max):
                     continue
                 tally[2] += 1
                 cost = cost_in + cost_out[e] + weight * burn[k]
-                state = j * stride + out_leg[j, e] % columns
+                state = j * stride + _column(out_leg[j, e], columns)
                 if cost < best[state]:
                     best[state] = cost
                     from_leg[state] = j * k_in + p
                     by_leg[state] = out_leg[j, e]
+
+
+@njit(**PLAIN)
+def turns(in_fields, in_cost, in_count, out_fields, out_count, bounds):
+    """Whether any leg in can be turned into any leg out, whatever the burn; arrays as in `join`."""
+    c_min, c_max = bounds[3], bounds[4]
+    for j in range(in_fields.shape[0]):
+        inward, outward = in_fields[j], out_fields[j]
+        for p in range(in_count[j]):
+            if in_cost[j, p] == math.inf:
+                continue
+            for e in range(out_count[j]):
+                c = inward[UX, p] * outward[UX, e] + inward[UY, p] * outward[UY, e]
+                c += inward[UZ, p] * outward[UZ, e]
+                sharpest = inward[COSINE, p] * outward[COSINE, e] - inward[SINE, p] * outward[SINE, e]
+                if c >= sharpest and c_min <= c <= c_max:
+                    return True
+    return False

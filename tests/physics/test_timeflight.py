@@ -127,7 +127,7 @@ def test_what_counts_as_settled_has_the_right_flight_time(problems):
     p = np.where(sigma > 0.0, 1.0 + sigma, delta) - sigma * q
     settled = (second < SETTLED) & (q < 1.0 + U_MAX_WIDE) & (p > LEAST_P_ROW)
     assert np.mean(settled) > 0.95
-    for j in np.flatnonzero(settled)[::3]:
+    for j in np.flatnonzero(settled)[np.argsort(-second[settled])[:500]]:  # those that were settled barely
         miss = abs(float(exact_time(sigma[j], delta[j], q[j]) / mpf(t[j]) - 1))
         # what subtraction makes small has the rounding of its terms: p = a − σq, and t/√p = σ + pF
         assert miss < 1e-14 + 4.0 * EPS * (1.0 / p[j] + np.sqrt(p[j]) / t[j])

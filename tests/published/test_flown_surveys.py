@@ -1,8 +1,8 @@
 """Given windows of more than a year for every encounter, a survey's ten best hold the mission that flew.
 
 Nothing in a scenario knows the dates: windows are round, limits and ranking are what an analyst would have
-written down first. The encounter dates (UTC) and radii are those of the agencies' mission pages; UTC and the TDB
-of the tables are a minute apart.
+written down first. The encounter dates (UTC) and radii are those of the agencies' mission pages; the tables
+have TDB, which is a minute ahead.
 """
 
 import numpy as np
@@ -14,10 +14,11 @@ from porkgrid.survey.admit import load_scenario
 from porkgrid.survey.folder import CANDIDATES
 from porkgrid.survey.sweep import sweep
 
-# Two and a half years of each planet, three days a step. Ranked by total Δv from a low orbit: the launch, and
-# what the flyby lacks of being free. Limits bound what is hopeless rather than what is best: 40 km²/s² is twice
-# what a good Venus season with its flyby asks for, a year is two and a half Hohmann flights to Venus. The burn
-# is bounded at the default, 0.2 km/s. Ten days apart in every date, as by default, is another window.
+# Two and a half years of each planet, three days a step. Ranked by total Δv from a low orbit: the launch,
+# and what the flyby lacks of being free. Limits bound what is hopeless rather than what is best: 40 km²/s²
+# is twice what a good Venus season with its flyby asks for, a year is two and a half Hohmann flights to
+# Venus. The burn is bounded at the default, 0.2 km/s. Ten days apart in every date, as by default, is
+# another window.
 MARINER_10 = """
 name = "Earth, Venus, Mercury, 1973"
 measures = ["c3_km2_s2", "v_inf_arrival_km_s"]
@@ -50,10 +51,11 @@ by = "dv_total_km_s"
 keep = 10
 """
 
-# A year and a half or more of each planet, steps that grow outwards as the planets slow down. Ranked by total
-# Δv, as above. 110 km²/s² is what a Titan IIIE-Centaur with a kick stage gave 800 kg (practice). 13 years bound
-# what can be hoped for of the hardware; a Hohmann flight to Neptune takes 30. Burns are bounded at the
-# default, 0.2 km/s each. Twenty days apart, because windows with a dozen years of flight differ by weeks.
+# A year and a half or more of each planet, steps that grow outwards as the planets slow down. Ranked by
+# total Δv, as above. 110 km²/s² is what a Titan IIIE-Centaur with a kick stage gave 800 kg (practice). 13
+# years bound what can be hoped for of the hardware; a Hohmann flight to Neptune takes 30. Burns are bounded
+# at the default, 0.2 km/s each. Twenty days apart, because windows with a dozen years of flight differ by
+# weeks.
 VOYAGER_2 = """
 name = "Earth, Jupiter, Saturn, Uranus, Neptune, 1977"
 measures = ["c3_km2_s2", "v_inf_arrival_km_s"]

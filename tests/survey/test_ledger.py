@@ -1,5 +1,7 @@
 """The ledger of finished tiles, whole, torn and blotted."""
 
+import os
+
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
@@ -32,6 +34,14 @@ def test_an_entry_is_in_the_file_before_the_ledger_is_closed(tmp_path):
     with open_ledger(tmp_path) as ledger:
         enter(ledger, sums(0))
         assert read_ledger(tmp_path) == {0: sums(0)}
+
+
+def test_an_entry_has_been_sent_to_the_disk_when_it_counts(tmp_path, monkeypatch):
+    on_disk = []
+    monkeypatch.setattr(os, "fsync", lambda _: on_disk.append((tmp_path / LEDGER).read_bytes()))
+    write(tmp_path, sums(0), sums(1))
+    whole = (tmp_path / LEDGER).read_bytes()
+    assert on_disk == [whole[: whole.index(b"\n") + 1], whole]
 
 
 def test_a_last_line_torn_at_any_byte_does_not_count_and_is_cut_off(tmp_path):
