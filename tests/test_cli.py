@@ -12,7 +12,7 @@ from pathlib import Path
 import pandas as pd
 import pytest
 from command import messages, porkgrid
-from survey_scenarios import ROOK, limited, written
+from survey_scenarios import LEAN, ROOK, limited, written
 
 from porkgrid.cli import main
 
@@ -39,14 +39,14 @@ def table_of(printed: str) -> list[tuple[str, ...]]:
 
 @pytest.fixture
 def here(monkeypatch, capsys):
-    """Run a command in this process, where everything is loaded already; its standard output."""
+    """Run a command in this process, where everything is loaded already; its outputs, .out and .err."""
 
-    def run(*arguments: str | Path) -> str:
+    def run(*arguments: str | Path):
         monkeypatch.setattr("sys.argv", ["porkgrid", *map(str, arguments)])
         with pytest.raises(SystemExit) as ended:
             main()
         assert not ended.value.code
-        return capsys.readouterr().out
+        return capsys.readouterr()
 
     return run
 
@@ -57,7 +57,7 @@ def test_help_is_there_for_every_command(here):
     assert result.stderr == ""
     for command in COMMANDS:
         assert re.search(rf"^  {command} ", result.stdout, re.M)
-        assert "--help" in here(command, "--help")
+        assert "--help" in here(command, "--help").out
 
 
 def test_a_sweep_prints_the_table_and_draws_the_charts(swept):
@@ -80,12 +80,10 @@ def test_what_does_not_go_to_a_terminal_has_no_colour_and_no_bar(swept):
     assert "sweeping" not in result.stderr
 
 
-def test_sweeping_again_tells_the_same_as_json(swept, scenario):
+def test_sweeping_again_tells_the_same_as_json(swept, scenario, here):
     _, folder = swept
     before = (folder / "survey.json").read_bytes()
-    result = porkgrid("sweep", scenario, "--out", folder, "--json")
-    assert result.returncode == 0, result.stderr
-    told = json.loads(result.stdout)
+    told = json.loads(here("sweep", scenario, "--out", folder, "--json").out)
     assert (told["name"], told["route"], told["cells"]) == ("Rook to Mars", "Earth → Mars", 43 * 59)
     assert told["survey"] == str(folder)
     assert told["closed"] == []
@@ -98,10 +96,10 @@ def test_sweeping_again_tells_the_same_as_json(swept, scenario):
 def test_ranking_by_another_measure(swept, here):
     _, folder = swept
     request = ("rank", folder, "--by", "tof_days", "--order", "most", "--keep", "2")
-    ranked = json.loads(here(*request, "--json"))
+    ranked = json.loads(here(*request, "--json").out)
     assert [row["rank"] for row in ranked] == [1, 2]
     assert ranked[0]["tof_days"] >= ranked[1]["tof_days"]
-    printed = here(*request)
+    printed = here(*request).out
     assert table_of(printed) == [(str(row["rank"]), row["departure"], row["arrival"]) for row in ranked]
     assert "tof_days *" in printed
 
@@ -109,43 +107,42 @@ def test_ranking_by_another_measure(swept, here):
 def test_a_chart_of_any_measure_in_any_format(swept, here):
     _, folder = swept
     measures = ("--of", "c3_km2_s2", "--lines", "v_inf_arrival_km_s")
-    paths = [Path(line) for line in here("chart", folder, *measures, "--format", "svg").splitlines()]
+    paths = [Path(line) for line in here("chart", folder, *measures, "--format", "svg").out.splitlines()]
     assert len(paths) >= 1
     assert all(path.suffix == ".svg" and b"<svg" in path.read_bytes()[:500] for path in paths)
 
 
 def test_checking_says_what_a_sweep_would_cost(scenario, here):
-    told = json.loads(here("check", scenario, "--json"))
+    told = json.loads(here("check", scenario, "--json").out)
     assert told["cells"] == told["lambert_solves"] == 43 * 59
     assert min(told[key] for key in ("seconds", "memory_bytes", "disk_bytes", "workers", "tiles")) > 0
-    assert "2,537 cells in 1 tile" in here("check", scenario)
+    assert "2,537 cells in 1 tile" in here("check", scenario).out
 
 
 def test_bodies_are_listed_with_what_is_known_of_them(here):
-    told = json.loads(here("bodies", "--json"))
+    told = json.loads(here("bodies", "--json").out)
     assert told["mars"]["naif_id"] == 4
     assert told["earth"]["gm_km3_s2"] == pytest.approx(398_600.4355, rel=1e-9)
     assert {"mercury", "venus", "moon", "pluto"} <= told.keys()
-    assert re.search(r"^ *venus +299 +324858\.592 ", here("bodies"), re.M)
+    assert re.search(r"^ *venus +299 +324858\.592 ", here("bodies").out, re.M)
 
 
 def test_measures_are_listed_for_all_routes_or_for_one(scenario, here):
-    everything = json.loads(here("measures", "--json"))
+    everything = json.loads(here("measures", "--json").out)
     assert {"name": "c3_km2_s2", "unit": "km²/s²"}.items() <= everything[2].items()
-    mine = json.loads(here("measures", scenario, "--json"))
+    mine = json.loads(here("measures", scenario, "--json").out)
     assert {"leg1_revs", "dv_capture_km_s"} <= {each["name"] for each in mine}
     assert "leg{n}_revs" in {each["name"] for each in everything}
 
 
-def test_where_the_limits_forbid_every_cell_it_is_said_and_drawn_all_the_same(tmp_path):
-    path = written(tmp_path, limited(ROOK, "c3_km2_s2 = { max = 5 }\ntof_days = { max = 400 }"))
-    result = porkgrid("sweep", path, "--out", tmp_path / "survey")
-    assert result.returncode == 0, result.stderr
-    said = messages(result)
+def test_where_the_limits_forbid_every_cell_it_is_said_and_drawn_all_the_same(tmp_path, here):
+    path = written(tmp_path, limited(LEAN, "c3_km2_s2 = { max = 5 }\ntof_days = { max = 400 }"))
+    printed = here("sweep", path, "--out", tmp_path / "survey")
+    said = printed.err.splitlines()
     assert said[0] == "The limits forbid every cell."
     assert said[1].startswith("Most costly: C3 at most 5 km²/s², which forbids ")
     assert re.fullmatch(r"The first cell opens with c3_km2_s2 max = \d+\.\d+ km²/s²\.", said[2])
-    assert table_of(result.stdout) == []
+    assert table_of(printed.out) == []
     for name in ("chart.png", "limits.png"):
         assert (tmp_path / "survey" / "figures" / name).stat().st_size > 10_000
 

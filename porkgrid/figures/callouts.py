@@ -21,6 +21,7 @@ _RADII_IN = (0.09, 0.14, 0.22, 0.34, 0.50, 0.70, 0.95, 1.25, 1.6, 2.0)
 _DIRECTIONS_RAD = np.radians(np.arange(0.0, 360.0, 15.0))
 _SAMPLE_IN = 0.03  # between the points that stand for a line
 _PER_INCH, _PER_HIDDEN, _PER_CROSSED = 1.0, 0.06, 0.1  # what distance and pieces of line count
+_PER_BOX_CROSSED = 1.5  # what a leader through another label or mark counts
 _CROSSED_IN = 0.03
 _PAD_IN = 0.03  # around the text
 _LEADER_FROM_IN = 0.16
@@ -101,9 +102,10 @@ def _best_place(
                 if not _is_free(drawing.room, box):
                     continue
                 cost = _PER_INCH * radius + _PER_HIDDEN * drawing.hidden(box)
-                if cost >= least or _leader_meets(drawing.room, anchor, box):
+                if cost >= least:
                     continue
                 cost += _PER_CROSSED * _crossed_by_leader(drawing, anchor, box)
+                cost += _PER_BOX_CROSSED * _boxes_on_leader(drawing.room, anchor, box)
                 if cost < least:
                     best, least = (anchor, box), cost
     return best
@@ -130,20 +132,16 @@ def _leader(anchor: tuple[float, float], box: Box) -> np.ndarray | None:
     return np.stack([np.asarray(anchor) + away * (_LEADER_CLEARANCE_IN / distance), end])
 
 
-def _leader_meets(room: Room, anchor: tuple[float, float], box: Box) -> bool:
-    """Tell whether the leader would cross a box that is taken by something else than its own point."""
+def _boxes_on_leader(room: Room, anchor: tuple[float, float], box: Box) -> int:
+    """Count the taken boxes that the leader would cross, apart from that of its own point."""
     leader = _leader(anchor, box)
     if leader is None:
-        return False
-    others = [
-        taken
+        return 0
+    x, y = _sampled(leader).T
+    return sum(
+        bool(((taken.left < x) & (x < taken.right) & (taken.bottom < y) & (y < taken.top)).any())
         for taken in room.taken
         if not (taken.left < anchor[0] < taken.right and taken.bottom < anchor[1] < taken.top)
-    ]
-    return any(
-        other.left < x < other.right and other.bottom < y < other.top
-        for x, y in _sampled(leader)
-        for other in others
     )
 
 

@@ -99,6 +99,16 @@ def usual(n: int = 124, m: int = 335, **changes: object) -> xr.Dataset:
     return porkchop(departure, arrival, **{"limits": limits, **changes})  # type: ignore[arg-type]
 
 
+def with_flyby_dates(first: str = "2028-12-20", days_apart: float = 0.4) -> xr.Dataset:
+    """The usual survey with the epoch of a flyby that is later for later arrivals, as a Julian date."""
+    view = usual()
+    row = np.arange(view.sizes["departure"])[:, None] * 0.1
+    column = np.arange(view.sizes["arrival"])[None, :] * days_apart
+    jd = 2_440_587.5 + np.datetime64(first, "D").astype(float) + row + column
+    attrs = {"units": "days", "symbol": "flyby 1 (JD TDB)", "long_name": "epoch of flyby 1"}
+    return view.assign(flyby1_epoch_jd_tdb=(("departure", "arrival"), jd, attrs))
+
+
 def bests_of(view: xr.Dataset, of: str, order: str = "least") -> DayBests:
     values = np.broadcast_to(
         view[of].values if view[of].ndim == 2 else view[of].values[None, :], view["blocked_by"].shape

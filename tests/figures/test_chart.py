@@ -9,10 +9,15 @@ import numpy as np
 import pandas as pd
 import pytest
 import synthetic_porkchop as grids
+import xarray as xr
 from matplotlib.figure import Figure
 from synthetic_porkchop import C3, CASES, EVERY_CASE
 
 from porkgrid.figures.chart import draw_chart
+from porkgrid.figures.levels import value_scale
+from porkgrid.survey.view import DayBests
+
+FLYBY = "flyby1_epoch_jd_tdb"
 
 
 @cache
@@ -159,6 +164,67 @@ def test_a_survey_ranked_by_the_most_calls_the_greatest_best(placed_texts: Calla
     text = words(placed_texts(figure))
     assert f"greatest allowed delivered mass {np.nanmax(bests.departure_best):.1f} kg" in text
     assert "delivered mass (kg), higher is better" in text
+
+
+def epoch_at(view: xr.Dataset, candidate: pd.Series) -> float:
+    dates = {end: np.datetime64(str(candidate[end])) for end in ("departure", "arrival")}
+    return view[FLYBY].sel(dates, method="nearest").item()
+
+
+def date_chart(**dates: object) -> tuple[Figure, xr.Dataset, DayBests]:
+    view = grids.with_flyby_dates(**dates)  # type: ignore[arg-type]
+    bests = grids.bests_of(view, FLYBY)
+    candidates = grids.candidates_of(view, C3, 4)
+    epochs = [epoch_at(view, row) for _, row in candidates.iterrows()]
+    return draw_chart(view, bests, candidates.assign(**{FLYBY: epochs}), FLYBY, C3), view, bests
+
+
+@pytest.mark.parametrize("days_apart", [0.0, 0.002, 0.02, 0.4, 3.0, 40.0])
+def test_an_epoch_is_drawn_as_calendar_dates_that_collide_with_nothing(
+    days_apart: float, placed_texts: Callable, overlapping: Callable
+) -> None:
+    figure, _, _ = date_chart(days_apart=days_apart)
+    placed = placed_texts(figure)
+    assert overlapping(placed) == []
+    text = words(placed)
+    assert "flyby 1 date (TDB)" in text
+    assert "earliest flyby 1 date" in text
+    assert "is better" not in text
+    assert "JD" not in text
+    assert "24620" not in text  # no Julian date anywhere
+
+
+def test_the_headline_and_the_table_of_an_epoch_give_its_days(placed_texts: Callable) -> None:
+    figure, view, bests = date_chart()
+    days = np.floor(bests.departure_best - 2_440_587.5).astype("datetime64[D]")
+    at = int(np.nanargmin(bests.departure_best))
+    leaving = bests.departure[at].astype("datetime64[D]")
+    placed = placed_texts(figure)
+    assert f"earliest allowed flyby 1 date {days[at]}, leaving {leaving}" in words(placed)
+    candidates = grids.candidates_of(view, C3, 4)
+    texts = [text.get_text() for text, _ in placed]
+    for _, row in candidates.iterrows():
+        day = np.datetime64("1970-01-01") + int(np.floor(epoch_at(view, row) - 2_440_587.5))
+        assert str(day) in texts
+
+
+def test_the_strips_reach_every_allowed_days_value_also_beyond_the_colours(placed_texts: Callable) -> None:
+    view = grids.usual(c3_max=400)
+    bests = grids.bests_of(view, C3)
+    figure = draw_chart(view, bests, grids.candidates_of(view, C3, 3), C3, None)
+    _, _, below, beside = figure.axes
+    for axes, get_limits, best in (
+        (below, below.get_ylim, bests.departure_best),
+        (beside, beside.get_xlim, bests.arrival_best),
+    ):
+        low, high = get_limits()
+        assert low <= np.nanmin(best)
+        assert high >= np.nanmax(best)
+        drawn = np.concatenate([np.concatenate(line.get_data()) for line in axes.lines])
+        assert np.isin(best[np.isfinite(best)], drawn).all()
+    scale = value_scale(view[C3].values[view["blocked_by"].values == 0], "least")
+    assert scale is not None
+    assert max(np.nanmax(bests.departure_best), np.nanmax(bests.arrival_best)) > scale.levels[-1]
 
 
 def test_flight_time_guides_are_labelled_with_the_flight_time_at_their_end(placed_texts: Callable) -> None:

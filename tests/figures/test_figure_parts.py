@@ -6,7 +6,14 @@ import numpy as np
 import pytest
 import synthetic_porkchop as grids
 
-from porkgrid.figures.dates import cell_edges, date_ticks, dates_from_days, dates_from_iso, days_from_dates
+from porkgrid.figures.dates import (
+    cell_edges,
+    date_ticks,
+    dates_around,
+    dates_from_days,
+    dates_from_iso,
+    days_from_dates,
+)
 from porkgrid.figures.ground import ALLOWED, BEFORE_DEPARTURE, FIRST_LIMIT, OTHER_ALONE, SEVERAL, read_ground
 from porkgrid.figures.hatches import hatch_coverage, hatch_tiles
 from porkgrid.figures.levels import round_levels, value_scale, value_text
@@ -91,6 +98,20 @@ def test_values_are_written_with_the_decimals_of_their_step() -> None:
         "−30",
         "0.00",
     ]
+
+
+@pytest.mark.parametrize("first", ["2028-10-15", "2028-12-31", "2029-01-01", "1969-12-25", "2032-02-29"])
+@pytest.mark.parametrize(
+    "span", [0.0, 0.4, 1.0, 3.0, 20.0, 45.0, 92.0, 124.0, 400.0, 1200.0, 5500.0, 40_000.0]
+)
+def test_round_dates_around_a_range_enclose_it_closely(first: str, span: float) -> None:
+    start = float(days_from_dates(np.array([first], "datetime64[D]"))[0]) + 0.25
+    marks = dates_around(start, start + span, 12)
+    assert 2 <= len(marks) <= 16
+    assert (np.diff(marks) > 0.0).all()
+    assert marks[0] <= start < marks[1]
+    assert marks[-2] < start + span <= marks[-1] or len(marks) == 2
+    assert (marks[-1] - marks[0]) <= max(span, 1.0) + 2.0 * np.diff(marks).max()
 
 
 @pytest.mark.parametrize("span", [0.4, 1.0, 3.0, 20.0, 45.0, 92.0, 124.0, 400.0, 1200.0, 5500.0, 40_000.0])

@@ -164,7 +164,7 @@ def test_the_path_far_out_runs_along_the_excess_velocity() -> None:
     )
     (disc,) = figure.axes[0].findobj(Circle)
     radius = np.hypot(*(out[-1] - np.array(disc.center))) / disc.get_radius() * picture.body_radius_km
-    # the angle left to turn beyond a distance is δ∞ − δ(r) of the hyperbola, from the velocity at true anomaly ν
+    # what is left to turn: the half-turn 1/sin, less what the velocity has turned at this true anomaly
     e = picture.eccentricity_out
     anomaly = np.arccos((picture.periapsis_km * (1.0 + e) / radius - 1.0) / e)
     flight_path = np.arctan2(e * np.sin(anomaly), 1.0 + e * np.cos(anomaly))

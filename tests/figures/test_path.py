@@ -154,8 +154,8 @@ def test_a_route_too_long_for_the_column_says_how_much_is_left_out(
     placed_texts: Callable, overlapping: Callable
 ) -> None:
     picture = picture_of("neptune")
-    long = replace(picture, encounters=picture.encounters[:1] + picture.encounters[1:4] * 8 + picture.encounters[4:],
-                   arcs=picture.arcs[:1] + picture.arcs[1:2] * 23 + picture.arcs[3:])  # fmt: skip
+    first, *flybys, last = picture.encounters
+    long = replace(picture, encounters=(first, *flybys * 8, last), arcs=picture.arcs[:1] * 25)
     placed = placed_texts(draw_path(long))
     column = [(text, box) for text, box in placed if text.get_position()[0] > 9.3]
     assert overlapping(column) == []

@@ -4,6 +4,10 @@ from __future__ import annotations
 
 from pathlib import Path
 
+import pytest
+
+from porkgrid.survey import plan
+
 # Every measure a direct route to Mars can have, limits that cut in different places, and some arrival dates
 # before departure dates.
 ROOK = """
@@ -32,6 +36,9 @@ arrival_sep_deg = { min = 30 }
 [rank]
 apart_days = 5
 """
+
+# The same with a few measures in the store, which is what a small sweep spends its time on.
+LEAN = 'measures = ["c3_km2_s2"]\n' + ROOK
 
 # Flights long enough for a revolution, where all three options exist in part of the grid.
 LOOPS = """
@@ -97,3 +104,9 @@ def written(folder: Path, text: str) -> Path:
     path = folder / "scenario.toml"
     path.write_text(text, encoding="utf-8")
     return path
+
+
+def shrink_tiles(patch: pytest.MonkeyPatch) -> None:
+    """Make tiles of 8 × 32 cells, so that a small grid has many."""
+    patch.setattr(plan, "TILE_COLUMNS", 32)
+    patch.setattr(plan, "TILE_CELLS", 256)

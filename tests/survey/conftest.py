@@ -6,10 +6,9 @@ from collections.abc import Callable
 from pathlib import Path
 
 import pytest
-from survey_scenarios import LOOPS, PETREL, ROOK, written
+from survey_scenarios import LOOPS, PETREL, ROOK, shrink_tiles, written
 
 from porkgrid.scenario import Scenario
-from porkgrid.survey import plan as plans
 from porkgrid.survey.admit import load_scenario
 from porkgrid.survey.cells import Cells
 from porkgrid.survey.plan import Plan, make_plan
@@ -62,19 +61,14 @@ def petrel_cells(petrel) -> Cells:
 @pytest.fixture
 def small_tiles(monkeypatch) -> None:
     """Tiles of 8 × 32 cells: many even in a small grid."""
-    _shrink_tiles(monkeypatch)
-
-
-def _shrink_tiles(patch: pytest.MonkeyPatch) -> None:
-    patch.setattr(plans, "TILE_COLUMNS", 32)
-    patch.setattr(plans, "TILE_CELLS", 256)
+    shrink_tiles(monkeypatch)
 
 
 @pytest.fixture(scope="session")
 def survey(scenario_of, tmp_path_factory) -> Survey:
     """ROOK, swept in 12 tiles. Do not write to it."""
     with pytest.MonkeyPatch.context() as patch:
-        _shrink_tiles(patch)
+        shrink_tiles(patch)
         swept = sweep(scenario_of(ROOK), tmp_path_factory.mktemp("survey") / "rook", workers=2)
     return swept
 

@@ -7,7 +7,7 @@ from os import strerror
 import numpy as np
 import pytest
 import xarray as xr
-from survey_scenarios import LOOPS, ROOK, changed, limited
+from survey_scenarios import LEAN, LOOPS, ROOK, changed, limited, shrink_tiles
 
 from porkgrid import RunError
 from porkgrid.survey import sweep as engine
@@ -20,7 +20,15 @@ pytestmark = pytest.mark.usefixtures("small_tiles")
 
 @pytest.fixture(scope="module")
 def scenario(scenario_of):
-    return scenario_of(ROOK)
+    return scenario_of(LEAN)
+
+
+@pytest.fixture(scope="module")
+def whole(scenario, tmp_path_factory):
+    """LEAN in small tiles, swept at one go by two workers."""
+    with pytest.MonkeyPatch.context() as patch:
+        shrink_tiles(patch)
+        return sweep(scenario, tmp_path_factory.mktemp("once") / "survey", workers=2)
 
 
 def chunks(folder):
@@ -71,20 +79,20 @@ def test_solves_are_counted_for_every_option(sweep_text):
 
 
 @pytest.mark.parametrize("workers", [1, 5])
-def test_the_number_of_workers_does_not_change_a_bit(scenario, survey, tmp_path, workers):
-    assert_same_survey(sweep(scenario, tmp_path, workers).path, survey.path)
+def test_the_number_of_workers_does_not_change_a_bit(scenario, whole, tmp_path, workers):
+    assert_same_survey(sweep(scenario, tmp_path, workers).path, whole.path)
 
 
-def test_the_size_of_tiles_does_not_change_the_grid(scenario, survey, tmp_path, monkeypatch):
+def test_the_size_of_tiles_does_not_change_the_grid(scenario, whole, tmp_path, monkeypatch):
     monkeypatch.setattr("porkgrid.survey.plan.TILE_CELLS", 10**6)
     monkeypatch.setattr("porkgrid.survey.plan.TILE_COLUMNS", 10**4)
     other = sweep(scenario, tmp_path, 1)
     assert len(read_ledger(tmp_path)) == 1
-    xr.testing.assert_allclose(other.grid.load(), survey.grid.load(), rtol=1e-6)
-    assert np.array_equal(other.grid["blocked_by"].values, survey.grid["blocked_by"].values)
+    xr.testing.assert_allclose(other.grid.load(), whole.grid.load(), rtol=1e-6)
+    assert np.array_equal(other.grid["blocked_by"].values, whole.grid["blocked_by"].values)
 
 
-def test_a_finished_sweep_is_not_computed_again(scenario, survey, tmp_path, monkeypatch):
+def test_a_finished_sweep_is_not_computed_again(scenario, whole, tmp_path, monkeypatch):
     sweep(scenario, tmp_path, 1)
     before = (tmp_path / "survey.json").read_bytes()
 
@@ -95,13 +103,13 @@ def test_a_finished_sweep_is_not_computed_again(scenario, survey, tmp_path, monk
     (tmp_path / "candidates.csv").unlink()
     again = sweep(scenario, tmp_path, 1)
     assert (tmp_path / "survey.json").read_bytes() == before
-    assert_same_survey(again.path, survey.path)
+    assert_same_survey(again.path, whole.path)
 
 
-def test_a_fresh_sweep_is_computed_again(scenario, survey, tmp_path):
+def test_a_fresh_sweep_is_computed_again(scenario, whole, tmp_path):
     sweep(scenario, tmp_path, 1)
     (tmp_path / "grid.zarr" / "c3_km2_s2" / "c" / "0" / "0").write_bytes(b"damaged")
-    assert_same_survey(sweep(scenario, tmp_path, 1, fresh=True).path, survey.path)
+    assert_same_survey(sweep(scenario, tmp_path, 1, fresh=True).path, whole.path)
 
 
 def test_by_default_the_survey_goes_to_a_folder_of_its_name(scenario, tmp_path, monkeypatch):
@@ -110,7 +118,7 @@ def test_by_default_the_survey_goes_to_a_folder_of_its_name(scenario, tmp_path, 
     assert open_survey("surveys/rook-to-mars").provenance["state"] == "complete"
 
 
-def test_progress_goes_up_to_the_whole(scenario, survey, tmp_path):
+def test_progress_goes_up_to_the_whole(scenario, whole, tmp_path):
     seen = []
     sweep(scenario, tmp_path, 2, report=seen.append)
     cells = [progress.cells_done for progress in seen]
@@ -120,7 +128,7 @@ def test_progress_goes_up_to_the_whole(scenario, survey, tmp_path):
     assert (seen[-1].tiles_done, seen[-1].cells_done) == (12, 43 * 59)
     best = [progress.best for progress in seen if progress.best is not None]
     assert best == sorted(best, reverse=True)
-    assert best[-1] == pytest.approx(survey.candidates["dv_total_km_s"][0], rel=1e-9)
+    assert best[-1] == pytest.approx(whole.candidates["dv_total_km_s"][0], rel=1e-9)
 
 
 def stop_after(count, error):
@@ -137,7 +145,7 @@ def stop_after(count, error):
 
 @pytest.mark.parametrize("workers", [1, 2])
 def test_an_interrupted_sweep_saves_the_tiles_in_hand_and_goes_on_with_the_rest(
-    scenario, survey, tmp_path, workers, monkeypatch
+    scenario, whole, tmp_path, workers, monkeypatch
 ):
     with pytest.raises(KeyboardInterrupt):
         sweep(scenario, tmp_path, workers, report=stop_after(5, KeyboardInterrupt))
@@ -150,7 +158,7 @@ def test_an_interrupted_sweep_saves_the_tiles_in_hand_and_goes_on_with_the_rest(
         return compute_tile(plan, tile)
 
     monkeypatch.setattr(engine, "compute_tile", counting)
-    assert_same_survey(sweep(scenario, tmp_path, workers).path, survey.path)
+    assert_same_survey(sweep(scenario, tmp_path, workers).path, whole.path)
     assert sorted(computed) == sorted(set(range(12)) - done)
 
 
@@ -185,23 +193,23 @@ def test_what_the_file_system_refuses_is_said_with_the_folder(scenario, tmp_path
 
 @pytest.mark.parametrize(("stage", "at"), [("create_store", 1), ("write_tile", 4), ("enter", 4), ("pick", 1)])
 def test_a_full_disk_at_any_stage_leaves_no_half_survey_and_the_sweep_goes_on_later(
-    scenario, survey, tmp_path, monkeypatch, stage, at
+    scenario, whole, tmp_path, monkeypatch, stage, at
 ):
     with monkeypatch.context() as patch:
         patch.setattr(engine, stage, refusing(getattr(engine, stage), errno.ENOSPC, at))
         with pytest.raises(RunError):
             sweep(scenario, tmp_path, 2)
     assert json.loads((tmp_path / "survey.json").read_text())["state"] != "complete"
-    assert_same_survey(sweep(scenario, tmp_path, 2).path, survey.path)
+    assert_same_survey(sweep(scenario, tmp_path, 2).path, whole.path)
 
 
 def test_a_survey_closed_by_its_limits_is_complete_all_the_same(sweep_text):
-    survey = sweep_text(limited(ROOK, "c3_km2_s2 = { max = 1 }"))
+    survey = sweep_text(limited(LEAN, "c3_km2_s2 = { max = 1 }"))
     assert survey.provenance["state"] == "complete"
     assert survey.provenance["cells_allowed"] == 0
 
 
 def test_a_grid_of_one_cell_is_a_survey(sweep_text):
     windows = ("last = 2029-04-01", "last = 2028-09-01"), ("last = 2030-03-31", "last = 2029-02-15")
-    one = changed(limited(ROOK, ""), *windows)
+    one = changed(limited(LEAN, ""), *windows)
     assert len(sweep_text(one).candidates) == 1
