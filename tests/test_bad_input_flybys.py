@@ -1,10 +1,9 @@
-"""Requests with flybys that cannot be met, in processes of their own: a clear message, exit code 2, no debris."""
+"""Requests with flybys that cannot be met, in processes of their own: clear messages, exit code 2."""
 
 from __future__ import annotations
 
 import subprocess
 import sys
-from pathlib import Path
 
 import pytest
 from command import PORKGRID, assert_refused, porkgrid
@@ -77,11 +76,11 @@ BAD = {
     ),
     "burn limit below zero": (
         ("max_burn_km_s = 0.3", "max_burn_km_s = -0.1"),
-        "encounter 2, flyby.max_burn_km_s: must be 0 or more, not -0.1",
+        "encounter 2, flyby.max_burn_km_s: must be 0 or more, not the number -0.1",
     ),
     "altitude under the surface": (
         ("min_altitude_km = 400", "min_altitude_km = -400"),
-        "encounter 2, flyby.min_altitude_km: must be 0 or more, not -400",
+        "encounter 2, flyby.min_altitude_km: must be 0 or more, not the number -400",
     ),
     "misspelt flyby key": (
         ("min_altitude_km", "min_altitud_km"),
@@ -104,7 +103,7 @@ BAD = {
 
 @pytest.fixture
 def refuse(tmp_path):
-    """Give a text to `sweep` and to `check` and expect the same messages, and nothing where a survey would be."""
+    """Expect the same messages of `sweep` and of `check`, and nothing where a survey would be."""
 
     def both(text: str, *fragments: str) -> None:
         path = written(tmp_path / "given", text)

@@ -38,7 +38,7 @@ def draw_figures(survey: Survey, of: str | None, lines: str | None, formats: Seq
     drawn = save_figure(chart, folder / stem, formats)
     drawn += save_figure(draw_limit_map(view, flag_shares(survey)), folder / "limits", formats)
     if usual:
-        for name in survey.grid.data_vars:
+        for name in map(str, survey.grid.data_vars):
             if name.startswith("flyby") and name.endswith(("_epoch_jd_tdb", "_altitude_km")):
                 drawn += _draw_flyby_map(survey, name, formats)
     return drawn
