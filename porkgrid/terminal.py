@@ -51,7 +51,7 @@ def print_table(headings: Sequence[str], rows: Iterable[Sequence[str]], title: s
 
 
 def fitting(headings: Sequence[str], rows: Sequence[Sequence[str]], width: int) -> list[int]:
-    """Which columns of a table fit side by side, the last one kept whatever happens; wide ones count whole."""
+    """Which columns of a table fit side by side; the last one is kept whatever happens."""
     columns = zip(map(_broken, headings), *rows, strict=True)
     taken = [3 + max(len(line) for cell in column for line in cell.split("\n")) for column in columns]
     last = len(headings) - 1

@@ -104,7 +104,7 @@ def _best_place(
                 cost = _PER_INCH * radius + _PER_HIDDEN * drawing.hidden(box)
                 if cost >= least:
                     continue
-                cost += _PER_CROSSED * _crossed_by_leader(drawing, anchor, box)
+                cost += _PER_CROSSED * _crossed(drawing, anchor, box)
                 cost += _PER_BOX_CROSSED * _boxes_on_leader(drawing.room, anchor, box)
                 if cost < least:
                     best, least = (anchor, box), cost
@@ -122,14 +122,20 @@ def _is_free(room: Room, box: Box) -> bool:
     return room.region.holds(box) and not any(box.meets(other) for other in room.taken)
 
 
+def _way(anchor: tuple[float, float], box: Box) -> np.ndarray:
+    """Return the shortest line (2, 2) from a point to a box."""
+    end = (np.clip(anchor[0], box.left, box.right), np.clip(anchor[1], box.bottom, box.top))
+    return np.array([anchor, end])
+
+
 def _leader(anchor: tuple[float, float], box: Box) -> np.ndarray | None:
     """Return the two ends of the leader from a point to a box; None where the box stands close by."""
-    end = np.array([np.clip(anchor[0], box.left, box.right), np.clip(anchor[1], box.bottom, box.top)])
-    away = end - np.asarray(anchor)
+    start, end = _way(anchor, box)
+    away = end - start
     distance = float(np.hypot(*away))
     if distance < _LEADER_FROM_IN:
         return None
-    return np.stack([np.asarray(anchor) + away * (_LEADER_CLEARANCE_IN / distance), end])
+    return np.stack([start + away * (_LEADER_CLEARANCE_IN / distance), end])
 
 
 def _boxes_on_leader(room: Room, anchor: tuple[float, float], box: Box) -> int:
@@ -145,13 +151,12 @@ def _boxes_on_leader(room: Room, anchor: tuple[float, float], box: Box) -> int:
     )
 
 
-def _crossed_by_leader(drawing: Drawing, anchor: tuple[float, float], box: Box) -> int:
-    """Count the samples of lines on the leader, if the box has one; those at its own point do not count."""
-    leader = _leader(anchor, box)
-    if leader is None or not len(drawing.ink):
+def _crossed(drawing: Drawing, anchor: tuple[float, float], box: Box) -> int:
+    """Count the samples of lines between a point and a box; those at the point itself do not count."""
+    if not len(drawing.ink):
         return 0
     ink = drawing.ink[np.hypot(*(drawing.ink - np.asarray(anchor)).T) > _LEADER_CLEARANCE_IN]
-    apart = ink[:, None, :] - _sampled(leader)[None, :, :]
+    apart = ink[:, None, :] - _sampled(_way(anchor, box))[None, :, :]
     return int(np.count_nonzero((np.hypot(apart[..., 0], apart[..., 1]) < _CROSSED_IN).any(axis=1)))
 
 

@@ -22,12 +22,16 @@ BEFORE, AFTER, BODY_INK = "#0072b2", "#d55e00", INK  # Okabe and Ito (2008), "Co
 
 _X, _Y, _Z = range(3)
 _THICK_PT, _THIN_PT = 2.2, 1.2
-_PAD_IN = 0.42  # for labels, around the arrows
+_PAD_IN = 0.42  # for labels, above and below the arrows
+_LEFT_IN, _RIGHT_IN = 0.30, 1.20  # and beside them: v∞ is on the right
 _GAP_IN = 0.42  # between the two views
 _ARC_SHARE = 0.35  # of the shorter arrow, for the radius of the turn's arc
 _ANCHORS = (0.5, 0.44, 0.56, 0.38, 0.62, 0.32, 0.68, 0.26, 0.74, 0.2, 0.8, 0.14, 0.86)
 _ARROW_WEIGHT = 3  # to labels, which should rather stand off than hide an arrow
 _BESIDE_IN, _AWAY_IN = 0.15, 2.0  # where a name may stand from its arrow: first beside it
+_APART_IN = 0.18  # from other arrows, where an arrow is best named
+_REDUCTIONS = {1.0: "", 0.5: ", at half the scale", 0.25: ", at a quarter of the scale"}
+_LEAST_FILLED = 0.8  # of what the view square to the plane could fill by itself
 _LEAST_SINE = 1e-9
 
 
@@ -75,20 +79,27 @@ class _Arrow:
 
 
 def draw_vectors(sheet: Axes, box: Box, picture: FlybyPicture, axes: FlybyAxes) -> None:
-    """Fill a box of the slide with the two views, one above the other, at one scale."""
+    """Fill a box of the slide with the two views, one above the other."""
     arrows = list(_arrows(picture, axes))
     low, high = extent([np.column_stack([arrow.tail, arrow.tip]) for arrow in arrows])
     square, edge = _planes(box, low, high)
     _frame(sheet, square.box, "Seen square to the plane of the flyby, the body's motion to the right")
-    _frame(sheet, edge.box, f"Seen on the edge of that plane, which {_leaves(picture, axes)}")
+    angle = number_text(abs(out_of_plane_deg(picture, axes)), "deg")
+    smaller = _REDUCTIONS[edge.x_scale / square.x_scale]
+    leaves = f"the body's motion leaves it at {angle}"
+    _frame(sheet, edge.box, f"Seen on the edge of that plane{smaller}: {leaves}")
 
     drawing = _draw_arrows(sheet, square, arrows, (_X, _Y))
     _draw_turn(sheet, square, drawing, arrows[1], arrows[2], picture.turn_rad * axes.turns)
     _draw_scale(sheet, square, drawing)
-    for arrow in sorted(arrows, key=lambda arrow: -len(arrow.text)):  # long ones while there is room
-        _name(sheet, square, drawing, arrow, (_X, _Y), arrow.text)
+    for arrow in sorted(arrows, key=_length):  # short ones have the fewest places for their names
+        _name(sheet, square, drawing, arrow, arrows, (_X, _Y), arrow.text)
     drawing = _draw_arrows(sheet, edge, arrows, (_X, _Z))
-    _name(sheet, edge, drawing, arrows[0], (_X, _Z), f"{picture.body}'s velocity")
+    _name(sheet, edge, drawing, arrows[0], arrows, (_X, _Z), f"{picture.body}'s velocity")
+
+
+def _length(arrow: _Arrow) -> float:
+    return float(np.hypot(*(arrow.tip - arrow.tail)[[_X, _Y]]))
 
 
 def _arrows(picture: FlybyPicture, axes: FlybyAxes) -> Iterator[_Arrow]:
@@ -110,31 +121,34 @@ def _km_s(speed: np.floating) -> str:
     return number_text(float(speed), "km/s")
 
 
-def _leaves(picture: FlybyPicture, axes: FlybyAxes) -> str:
-    """Say at what angle the body's motion leaves the plane."""
-    degrees = abs(out_of_plane_deg(picture, axes))
-    return f"the body's motion leaves at {number_text(degrees, 'deg')}"
-
-
 def out_of_plane_deg(picture: FlybyPicture, axes: FlybyAxes) -> float:
     """Return the angle of the body's velocity to the plane of the flyby, positive to the north."""
     return float(np.degrees(np.arcsin(np.clip(axes.turned(_unit(picture.body_velocity))[_Z], -1.0, 1.0))))
 
 
 def _planes(box: Box, low: np.ndarray, high: np.ndarray) -> tuple[Plane, Plane]:
-    """Share a box between the views by the heights of what they show."""
+    """Share a box between the views by the heights of what they show.
+
+    The view on the edge is reduced where it would otherwise make the other one small.
+    """
     width, height = box.right - box.left, box.top - box.bottom
-    span = high - low
+    x, y, z = high - low
     free = height - _GAP_IN - 4.0 * _PAD_IN
-    scale = min((width - 2.0 * _PAD_IN) / span[_X], free / max(span[_Y] + span[_Z], 1e-9))
-    spare = free - scale * (span[_Y] + span[_Z])
-    edge_height = scale * span[_Z] + 2.0 * _PAD_IN + spare * span[_Z] / max(span[_Y] + span[_Z], 1e-9)
+    widest = min((width - _LEFT_IN - _RIGHT_IN) / x, free / max(y, _LEAST_SINE * x))
+    for reduced in _REDUCTIONS:
+        tall = y + reduced * z
+        scale = float(min(widest, free / max(tall, _LEAST_SINE * x)))
+        if scale >= _LEAST_FILLED * widest:
+            break
+    share = reduced * z / max(tall, _LEAST_SINE * x)
+    edge_height = share * free + 2.0 * _PAD_IN
     middle = 0.5 * (low + high)
+    aside, small = 0.5 * (_RIGHT_IN - _LEFT_IN), reduced * scale
     upper = Box(box.left, box.bottom + edge_height + _GAP_IN, box.right, box.top)
     lower = Box(box.left, box.bottom, box.right, box.bottom + edge_height)
     return (
-        Plane(upper, float(middle[_X]), float(middle[_Y]), scale, scale),
-        Plane(lower, float(middle[_X]), float(middle[_Z]), scale, scale),
+        Plane(upper, float(middle[_X]) + aside / scale, float(middle[_Y]), scale, scale),
+        Plane(lower, float(middle[_X]) + aside / small, float(middle[_Z]), small, small),
     )
 
 
@@ -155,14 +169,35 @@ def _draw_arrows(sheet: Axes, plane: Plane, arrows: list[_Arrow], sides: tuple[i
 
 
 def _name(
-    sheet: Axes, plane: Plane, drawing: Drawing, arrow: _Arrow, sides: tuple[int, int], text: str
+    sheet: Axes,
+    plane: Plane,
+    drawing: Drawing,
+    arrow: _Arrow,
+    arrows: list[_Arrow],
+    sides: tuple[int, int],
+    text: str,
 ) -> None:
-    """Write a text along an arrow."""
+    """Write a text along an arrow, where it runs apart from the others if it does."""
     tail, tip = arrow.tail[list(sides)], arrow.tip[list(sides)]
     anchors = [plane.point(*(tail + share * (tip - tail))) for share in _ANCHORS]
+    others = [
+        [np.array(plane.point(*end[list(sides)])) for end in (other.tail, other.tip)]
+        for other in arrows
+        if other is not arrow
+    ]
+    apart = [
+        anchor for anchor in anchors if all(_distance(np.array(anchor), *ends) > _APART_IN for ends in others)
+    ]
     for reach in (_BESIDE_IN, _AWAY_IN):
-        if draw_callout(sheet, drawing, anchors, [text], SMALL_PT, arrow.color, reach_in=reach):
+        if draw_callout(sheet, drawing, apart or anchors, [text], SMALL_PT, arrow.color, reach_in=reach):
             return
+
+
+def _distance(point: np.ndarray, start: np.ndarray, end: np.ndarray) -> float:
+    """Return the distance of a point from the line between two others."""
+    step = end - start
+    share = np.clip((point - start) @ step / max(float(step @ step), 1e-12), 0.0, 1.0)
+    return float(np.hypot(*(point - start - share * step)))
 
 
 def _draw_turn(

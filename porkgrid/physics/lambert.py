@@ -22,6 +22,7 @@ from numpy.typing import ArrayLike
 from porkgrid.physics.constants import OBLIQUITY_J2000_ARCSEC
 from porkgrid.physics.products import cross
 from porkgrid.physics.timeflight import (
+    LEAST_P_ROW,
     PLAIN,
     ROW,
     SETTLED,
@@ -45,9 +46,6 @@ FLOWN, NOT_AFTER, NO_PLANE, NO_TRANSFER, BAD_INPUT = 0, 1, 2, 3, 4
 # on the last digits of the positions.
 _LEAST_SINE = 1e-10
 
-# A smaller p has lost digits to the subtraction p = a − σq; the one-by-one solver takes p as its unknown.
-_LEAST_P_ROW = 1e-3
-
 # Rows of scratch that one call of `lambert_row` needs.
 SCRATCH_ROWS = 8
 
@@ -62,115 +60,123 @@ def norm_row(r, d):
         d[j] = math.sqrt(r[0, j] * r[0, j] + r[1, j] * r[1, j] + r[2, j] * r[2, j])
 
 
-@njit(**ROW)
-def _geometry_row(r1, d1, r2, d2, tof, gm, pole, way, sigma, delta, t, apart):
-    """The scaled problem: σ, δ = 1 − |σ| and the time t; `apart` < 0 where the plane is undefined.
+@njit(**ROW, inline="always")
+def _geometry(ax, ay, az, a, bx, by, bz, b, tof, gm, pole, way):
+    """The scaled problem: σ, δ = 1 − |σ|, the time t, and a number < 0 where the plane is undefined.
 
     `way` is +1 prograde, −1 retrograde.
     """
-    for j in range(tof.shape[0]):
-        ax, ay, az = r1[0, j], r1[1, j], r1[2, j]
-        bx, by, bz = r2[0, j], r2[1, j], r2[2, j]
-        nx, ny, nz = cross(ax, ay, az, bx, by, bz)
-        dx, dy, dz = bx - ax, by - ay, bz - az
-        a, b = d1[j], d2[j]
-        total = a + b
-        dot = ax * bx + ay * by + az * bz
-        n2 = nx * nx + ny * ny + nz * nz
-        # |r1||r2| + r1·r2 without cancellation: their product with the minus sign is |r1 × r2|²
-        large = a * b + abs(dot)
-        per_both = 1.0 / (large * total)
-        per_total = per_both * large
-        plus = large if dot > 0.0 else n2 * (per_both * total)
-        size = math.sqrt(2.0 * plus) * per_total
-        up = (nx * pole[0] + ny * pole[1] + nz * pole[2]) * way
-        sigma[j] = size if up >= 0.0 else -size
-        delta[j] = (dx * dx + dy * dy + dz * dz) * per_total * per_total / (1.0 + size)
-        t[j] = tof[j] * per_total * math.sqrt(2.0 * gm * per_total)
-        apart[j] = n2 - (_LEAST_SINE * a * b) * (_LEAST_SINE * a * b)
+    nx, ny, nz = cross(ax, ay, az, bx, by, bz)
+    dx, dy, dz = bx - ax, by - ay, bz - az
+    total = a + b
+    dot = ax * bx + ay * by + az * bz
+    n2 = nx * nx + ny * ny + nz * nz
+    # |r1||r2| + r1·r2 without cancellation: their product with the minus sign is |r1 × r2|²
+    large = a * b + abs(dot)
+    per_both = 1.0 / (large * total)
+    per_total = per_both * large
+    plus = large if dot > 0.0 else n2 * (per_both * total)
+    size = math.sqrt(2.0 * plus) * per_total
+    up = (nx * pole[0] + ny * pole[1] + nz * pole[2]) * way
+    delta = (dx * dx + dy * dy + dz * dz) * per_total * per_total / (1.0 + size)
+    t = tof * per_total * math.sqrt(2.0 * gm * per_total)
+    apart = n2 - (_LEAST_SINE * a * b) * (_LEAST_SINE * a * b)
+    return size if up >= 0.0 else -size, delta, t, apart
 
 
 @njit(**ROW)
-def _finish_row(sigma, delta, q, p, h):
-    """p and h = σ − u from q."""
-    for j in range(q.shape[0]):
-        s, d = sigma[j], delta[j]
-        above = 1.0 + s if s > 0.0 else d
-        p[j] = above - s * q[j]
-        h[j] = above - q[j]
+def _geometry_row(r1, d1, r2, d2, tof, gm, pole, way, sigma, delta, t, apart):
+    for j in range(tof.shape[0]):
+        sigma[j], delta[j], t[j], apart[j] = _geometry(
+            r1[0, j], r1[1, j], r1[2, j], d1[j], r2[0, j], r2[1, j], r2[2, j], d2[j], tof[j], gm, pole, way
+        )
+
+
+@njit(**ROW)
+def _geometry_fan(x, y, z, d, r2, d2, tof, gm, pole, way, sigma, delta, t, apart):
+    for j in range(tof.shape[0]):
+        sigma[j], delta[j], t[j], apart[j] = _geometry(
+            x, y, z, d, r2[0, j], r2[1, j], r2[2, j], d2[j], tof[j], gm, pole, way
+        )
+
+
+@njit(**ROW, inline="always")
+def _velocities(ax, ay, az, a, bx, by, bz, b, gm, s, p, h):
+    """Components of v1 and v2 from the shape; the formulas are in the module's docstring."""
+    nx, ny, nz = cross(ax, ay, az, bx, by, bz)
+    total, ab = a + b, a * b
+    # every quotient below from one division
+    per_all = 1.0 / (s * total * p * ab)
+    per_total = per_all * s * p * ab
+    per_ab = per_all * s * total * p
+    per_a, per_b = b * per_ab, a * per_ab
+    k = math.sqrt(2.0 * gm * per_all * s * ab)
+    across = k * per_all * p * ab
+    # r2 − r1 as a difference of squares keeps its digits where the radii are nearly equal
+    rise = ((bx - ax) * (bx + ax) + (by - ay) * (by + ay) + (bz - az) * (bz + az)) * per_total
+    radial1 = k * (h + 0.5 * s * rise * per_a) * per_a
+    radial2 = -k * (h - 0.5 * s * rise * per_b) * per_b
+    turn1, turn2 = across * per_a * per_a, across * per_b * per_b
+    return (
+        radial1 * ax + turn1 * (ny * az - nz * ay),
+        radial1 * ay + turn1 * (nz * ax - nx * az),
+        radial1 * az + turn1 * (nx * ay - ny * ax),
+        radial2 * bx + turn2 * (ny * bz - nz * by),
+        radial2 * by + turn2 * (nz * bx - nx * bz),
+        radial2 * bz + turn2 * (nx * by - ny * bx),
+    )
 
 
 @njit(**ROW)
 def _velocity_row(r1, d1, r2, d2, gm, sigma, p, h, v1, v2):
-    """Velocities (3, m) from the shape; the formulas are in the module's docstring."""
     for j in range(p.shape[0]):
-        ax, ay, az = r1[0, j], r1[1, j], r1[2, j]
-        bx, by, bz = r2[0, j], r2[1, j], r2[2, j]
-        nx, ny, nz = cross(ax, ay, az, bx, by, bz)
-        a, b = d1[j], d2[j]
-        total = a + b
-        s, pj, ab = sigma[j], p[j], a * b
-        # every quotient below from one division
-        per_all = 1.0 / (s * total * pj * ab)
-        per_total = per_all * s * pj * ab
-        per_ab = per_all * s * total * pj
-        per_a, per_b = b * per_ab, a * per_ab
-        k = math.sqrt(2.0 * gm * per_all * s * ab)
-        across = k * per_all * pj * ab
-        # r2 − r1 as a difference of squares keeps its digits where the radii are nearly equal
-        rise = ((bx - ax) * (bx + ax) + (by - ay) * (by + ay) + (bz - az) * (bz + az)) * per_total
-        radial = k * (h[j] + 0.5 * s * rise * per_a) * per_a
-        turn = across * per_a * per_a
-        v1[0, j] = radial * ax + turn * (ny * az - nz * ay)
-        v1[1, j] = radial * ay + turn * (nz * ax - nx * az)
-        v1[2, j] = radial * az + turn * (nx * ay - ny * ax)
-        radial = -k * (h[j] - 0.5 * s * rise * per_b) * per_b
-        turn = across * per_b * per_b
-        v2[0, j] = radial * bx + turn * (ny * bz - nz * by)
-        v2[1, j] = radial * by + turn * (nz * bx - nx * bz)
-        v2[2, j] = radial * bz + turn * (nx * by - ny * bx)
+        v1[0, j], v1[1, j], v1[2, j], v2[0, j], v2[1, j], v2[2, j] = _velocities(
+            r1[0, j], r1[1, j], r1[2, j], d1[j], r2[0, j], r2[1, j], r2[2, j], d2[j], gm, sigma[j], p[j], h[j]
+        )
+
+
+@njit(**ROW)
+def _velocity_fan(x, y, z, d, r2, d2, gm, sigma, p, h, v1, v2):
+    for j in range(p.shape[0]):
+        v1[0, j], v1[1, j], v1[2, j], v2[0, j], v2[1, j], v2[2, j] = _velocities(
+            x, y, z, d, r2[0, j], r2[1, j], r2[2, j], d2[j], gm, sigma[j], p[j], h[j]
+        )
 
 
 @njit(**ROW)
 def _sort_out_row(t, apart, status):
-    """Mark the problems that have no answer before they are tried."""
+    """Mark the problems that have no answer before they are tried; how many they are."""
+    count = 0
     for j in range(t.shape[0]):
         code = NO_PLANE if apart[j] < 0.0 else FLOWN
         code = NOT_AFTER if t[j] <= 0.0 else code
         # x − x is 0 for finite x only
-        status[j] = code if (t[j] - t[j]) + (apart[j] - apart[j]) == 0.0 else BAD_INPUT
-
-
-@njit(**ROW)
-def _count_unsettled(q, error, p, status, q_max):
-    """How many problems the Halley steps have not settled, those without an answer included."""
-    count = 0
-    for j in range(q.shape[0]):
-        settled = (abs(error[j]) < SETTLED) & (q[j] < q_max) & (p[j] > _LEAST_P_ROW)
-        count += 0 if settled & (status[j] == FLOWN) else 1
+        code = code if (t[j] - t[j]) + (apart[j] - apart[j]) == 0.0 else BAD_INPUT
+        status[j] = code
+        count += 0 if code == FLOWN else 1
     return count
 
 
 @njit(**PLAIN)
-def _settle_row(sigma, delta, t, q, error, p, h, status, q_max):
+def _settle_row(sigma, delta, t, error, p, h, status, q_max):
     """Finish what two Halley steps have not settled: with more of them, else in a bracket."""
-    if _count_unsettled(q, error, p, status, q_max) == 0:
-        return
     for j in range(t.shape[0]):
+        above = 1.0 + sigma[j] if sigma[j] > 0.0 else delta[j]
+        q = above - h[j]
         if status[j] != FLOWN:
             p[j] = h[j] = math.nan
-        elif not (abs(error[j]) < SETTLED and q[j] < q_max and p[j] > _LEAST_P_ROW):
-            p[j], h[j] = _settle(sigma[j], delta[j], t[j], q[j])
+        elif not (abs(error[j]) < SETTLED and q < q_max and p[j] > LEAST_P_ROW):
+            p[j], h[j] = _settle(sigma[j], delta[j], t[j], q)
 
 
 @njit(**PLAIN)
 def _settle(sigma, delta, t, q):
     above = 1.0 + sigma if sigma > 0.0 else delta
     for _ in range(3):
-        if not (0.0 < q < 1.0 + U_MAX_WIDE and above - sigma * q > _LEAST_P_ROW):
+        if not (0.0 < q < 1.0 + U_MAX_WIDE and above - sigma * q > LEAST_P_ROW):
             break
         q, error = halley_step(sigma, delta, t, q, True)
-        if abs(error) < SETTLED and above - sigma * q > _LEAST_P_ROW:
+        if abs(error) < SETTLED and above - sigma * q > LEAST_P_ROW:
             return above - sigma * q, above - q
     p, h, _ = solve(sigma, delta, t, 0, False)
     return p, h
@@ -187,28 +193,44 @@ def _revolutions_row(sigma, delta, t, revs, right, p, h, status):
 
 
 @njit(**PLAIN)
+def _shape_row(sigma, delta, t, apart, revs, right, q, error, p, h, status):
+    """p and h of every scaled problem, and what became of it."""
+    unflown = _sort_out_row(t, apart, status)
+    if revs > 0:
+        _revolutions_row(sigma, delta, t, revs, right, p, h, status)
+        return
+    start_row(sigma, delta, t, q)
+    wide = any_beyond(q, 1.0 + U_MAX_ROW)  # short flights; most rows have none
+    first_step_row(sigma, delta, t, q, wide)
+    unsettled = last_step_row(sigma, delta, t, q, error, p, h, wide)
+    if unflown + unsettled > 0:
+        _settle_row(sigma, delta, t, error, p, h, status, 1.0 + (U_MAX_WIDE if wide else U_MAX_ROW))
+
+
+@njit(**PLAIN)
 def lambert_row(r1, d1, r2, d2, tof, gm, pole, way, revs, right, scratch, v1, v2, status):
     """Solve a row of problems.
 
     r1, r2, v1, v2 (3, m) km and km/s; d1, d2 (m,) lengths of r1 and r2; tof (m,) s; status (m,) int8 gets
-    what became of each problem; scratch (SCRATCH_ROWS, m).
-    Velocities of problems that are not FLOWN are NaN.
+    what became of each problem; scratch (SCRATCH_ROWS, m). Velocities of problems not FLOWN are NaN.
     """
     sigma, delta, t, apart = scratch[0], scratch[1], scratch[2], scratch[3]
     q, error, p, h = scratch[4], scratch[5], scratch[6], scratch[7]
     _geometry_row(r1, d1, r2, d2, tof, gm, pole, way, sigma, delta, t, apart)
-    _sort_out_row(t, apart, status)
-    if revs == 0:
-        start_row(sigma, delta, t, q)
-        wide = any_beyond(q, 1.0 + U_MAX_ROW)  # short flights; most rows have none
-        first_step_row(sigma, delta, t, q, wide)
-        last_step_row(sigma, delta, t, q, error, wide)
-        _finish_row(sigma, delta, q, p, h)
-        q_max = 1.0 + (U_MAX_WIDE if wide else U_MAX_ROW)
-        _settle_row(sigma, delta, t, q, error, p, h, status, q_max)
-    else:
-        _revolutions_row(sigma, delta, t, revs, right, p, h, status)
+    _shape_row(sigma, delta, t, apart, revs, right, q, error, p, h, status)
     _velocity_row(r1, d1, r2, d2, gm, sigma, p, h, v1, v2)
+
+
+@njit(**PLAIN)
+def lambert_fan(r1, r2, d2, tof, gm, pole, way, revs, right, scratch, v1, v2, status):
+    """The same from one position r1 (3,) to many: a row of a grid of dates."""
+    x, y, z = r1[0], r1[1], r1[2]
+    d = math.sqrt(x * x + y * y + z * z)
+    sigma, delta, t, apart = scratch[0], scratch[1], scratch[2], scratch[3]
+    q, error, p, h = scratch[4], scratch[5], scratch[6], scratch[7]
+    _geometry_fan(x, y, z, d, r2, d2, tof, gm, pole, way, sigma, delta, t, apart)
+    _shape_row(sigma, delta, t, apart, revs, right, q, error, p, h, status)
+    _velocity_fan(x, y, z, d, r2, d2, gm, sigma, p, h, v1, v2)
 
 
 @njit(**PLAIN)

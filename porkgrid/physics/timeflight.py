@@ -58,6 +58,9 @@ _OFF_PARABOLA = 1e-7
 # its error is cubic in this one (tests/physics/test_timeflight.py measures it).
 SETTLED = 2e-5
 
+# A smaller p has lost digits to the subtraction p = a − σq; the one-by-one solver takes p as its unknown.
+LEAST_P_ROW = 1e-3
+
 # Seed and step of the inverse cube root, fitted together: 0.1 % at the most.
 _CBRT_SEED, _CBRT_A, _CBRT_B = 0x553E069F, 1.38422271, 0.38610342
 
@@ -228,15 +231,32 @@ def first_step_row(sigma, delta, t, q, wide):
             q[j] = _first_step(sigma[j], delta[j], t[j], q[j], False)
 
 
+@njit(**ROW, inline="always")
+def _last_step(s, d, t, q, q_max, wide):
+    """A Halley step and what it leads to: (error before it, p, h = σ − u, 1 where that is not settled)."""
+    q, e = halley_step(s, d, t, q, wide)
+    above = 1.0 + s if s > 0.0 else d
+    p = above - s * q
+    settled = (abs(e) < SETTLED) & (q < q_max) & (p > LEAST_P_ROW)
+    return e, p, above - q, 0 if settled else 1
+
+
 @njit(**ROW)
-def last_step_row(sigma, delta, t, q, error, wide):
-    """One Halley step on every q; error gets the relative error of the time before it."""
+def last_step_row(sigma, delta, t, q, error, p, h, wide):
+    """One Halley step on every q, which stays as it was; p and h = σ − u get the shapes it leads to.
+
+    error gets the relative error of the time before the step. Returns how many are not settled.
+    """
+    unsettled = 0
     if wide:
         for j in range(t.shape[0]):
-            q[j], error[j] = halley_step(sigma[j], delta[j], t[j], q[j], True)
+            error[j], p[j], h[j], left = _last_step(sigma[j], delta[j], t[j], q[j], 1.0 + U_MAX_WIDE, True)
+            unsettled += left
     else:
         for j in range(t.shape[0]):
-            q[j], error[j] = halley_step(sigma[j], delta[j], t[j], q[j], False)
+            error[j], p[j], h[j], left = _last_step(sigma[j], delta[j], t[j], q[j], 1.0 + U_MAX_ROW, False)
+            unsettled += left
+    return unsettled
 
 
 @njit(**ROW)

@@ -23,12 +23,6 @@ _LEAST_SINE = 1e-9
 
 
 @njit(**ROW, inline="always")
-def periapsis_start(a2, b2, per_sine):
-    """y of the hyperbola with v∞² = ab that turns by δ; per_sine = 1/sin(δ/2)."""
-    return (per_sine - 1.0) / math.sqrt(a2 * b2)
-
-
-@njit(**ROW, inline="always")
 def periapsis_step(a2, b2, per_sine, y):
     """One Newton step on y."""
     x1, x2 = a2 * y, b2 * y
@@ -46,8 +40,11 @@ def periapsis_step(a2, b2, per_sine, y):
 @njit(**ROW, inline="always")
 def periapsis(a2, b2, cosine):
     """y = r_p/GM of the flyby that turns by δ, given cos δ; settled for speeds within a factor of 3."""
-    per_sine = 1.0 / math.sqrt(max(0.5 - 0.5 * cosine, _LEAST_SINE * _LEAST_SINE))
-    y = periapsis_start(a2, b2, per_sine)
+    sine_half = math.sqrt(max(0.5 - 0.5 * cosine, _LEAST_SINE * _LEAST_SINE))
+    mean = math.sqrt(a2 * b2)
+    r = 1.0 / (sine_half * mean)
+    per_sine = r * mean
+    y = (1.0 - sine_half) * r
     y = periapsis_step(a2, b2, per_sine, y)
     y = periapsis_step(a2, b2, per_sine, y)
     return periapsis_step(a2, b2, per_sine, y)

@@ -104,17 +104,17 @@ def _screen(inward, p, cost_in, outward, cost_out, lo, hi, c_min, c_max, weight,
 def _burns(a2, b2, cosine, y_min, y_max, burn_max, burn):
     """Burn of every pair; infinite where it or the periapsis is outside its bounds."""
     far = 0
-    for k in range(a2.shape[0]):
-        y = periapsis(a2[k], b2[k], cosine[k])
-        spent = burn_at(a2[k], b2[k], y)
+    for k in range(b2.shape[0]):
+        y = periapsis(a2, b2[k], cosine[k])
+        spent = burn_at(a2, b2[k], y)
         burn[k] = spent if (y_min <= y) & (y <= y_max) & (spent <= burn_max) else math.inf
-        far += 1 if (a2[k] > 9.0 * b2[k]) | (b2[k] > 9.0 * a2[k]) else 0
+        far += 1 if (a2 > 9.0 * b2[k]) | (b2[k] > 9.0 * a2) else 0
     if far == 0:
         return
-    for k in range(a2.shape[0]):
-        if a2[k] > 9.0 * b2[k] or b2[k] > 9.0 * a2[k]:
-            y = periapsis_far(a2[k], b2[k], cosine[k], periapsis(a2[k], b2[k], cosine[k]))
-            spent = burn_at(a2[k], b2[k], y)
+    for k in range(b2.shape[0]):
+        if a2 > 9.0 * b2[k] or b2[k] > 9.0 * a2:
+            y = periapsis_far(a2, b2[k], cosine[k], periapsis(a2, b2[k], cosine[k]))
+            spent = burn_at(a2, b2[k], y)
             burn[k] = spent if y_min <= y <= y_max and spent <= burn_max else math.inf
 
 
@@ -156,7 +156,7 @@ def join(
     gain_min, gain_max, weight, dv_max, slack = bounds[5], bounds[6], bounds[7], bounds[8], bounds[9]
     k_in, k_out = in_fields.shape[2], out_fields.shape[2]
     cosine, least = np.empty(k_out), np.empty(k_out)
-    a2, b2, c = np.empty(k_out), np.empty(k_out), np.empty(k_out)
+    b2, c = np.empty(k_out), np.empty(k_out)
     burn, place = np.empty(k_out), np.empty(k_out, dtype=np.int64)
     for j in range(in_fields.shape[0]):
         inward, outward, cost_out = in_fields[j], out_fields[j], out_cost[j]
@@ -176,11 +176,11 @@ def join(
             for e in range(lo, hi):
                 if least[e] < best[j * stride + _column(out_leg[j, e], columns)]:
                     place[kept] = e
-                    a2[kept], b2[kept], c[kept] = inward[V2, p], outward[V2, e], cosine[e]
+                    b2[kept], c[kept] = outward[V2, e], cosine[e]
                     kept += 1
                 elif least[e] == math.inf:
                     tally[0] += 1
-            _burns(a2[:kept], b2[:kept], c[:kept], y_min, y_max, burn_max, burn[:kept])
+            _burns(inward[V2, p], b2[:kept], c[:kept], y_min, y_max, burn_max, burn[:kept])
             tally[1] += kept
             for k in range(kept):
                 if burn[k] == math.inf:

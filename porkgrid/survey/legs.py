@@ -11,7 +11,7 @@ from numba import njit
 
 from porkgrid.physics.arcs import distance_range, transfer_angle
 from porkgrid.physics.constants import DAY_S, GM_SUN_KM3_S2
-from porkgrid.physics.lambert import BLOCK, ECLIPTIC_POLE_ICRF, SCRATCH_ROWS, lambert_row, norm_row
+from porkgrid.physics.lambert import BLOCK, ECLIPTIC_POLE_ICRF, SCRATCH_ROWS, lambert_fan, norm_row
 from porkgrid.physics.timeflight import PLAIN, ROW
 from porkgrid.sky.states import StateTable
 
@@ -104,13 +104,14 @@ def _leg_grid(jd1, x1, u1, jd2, x2, u2, gm, pole, way, revs, right, v_out, v_in,
         end = min(left + BLOCK, jd2.shape[0])
         b, w2 = x2[:, left:end].copy(), u2[:, left:end].copy()
         scratch = np.empty((SCRATCH_ROWS, end - left))
-        a, v1, v2 = np.empty_like(b), np.empty_like(b), np.empty_like(b)
-        d1, d2 = np.empty(end - left), np.empty(end - left)
+        v1, v2, d2 = np.empty_like(b), np.empty_like(b), np.empty(end - left)
         norm_row(b, d2)
         tof = np.empty(end - left)
         for i in range(jd1.shape[0]):
-            _from_one_date(jd1[i], x1[:, i], jd2[left:end], a, d1, tof)
-            lambert_row(a, d1, b, d2, tof, gm, pole, way, revs, right, scratch, v1, v2, status[i, left:end])
+            _seconds_between(jd1[i], jd2[left:end], tof)
+            lambert_fan(
+                x1[:, i], b, d2, tof, gm, pole, way, revs, right, scratch, v1, v2, status[i, left:end]
+            )
             for k in range(3):
                 _minus_constant(v1[k], u1[k, i], v_out[k, i, left:end])
                 _minus(v2[k], w2[k], v_in[k, i, left:end])
@@ -126,24 +127,19 @@ def energy_and_arrival_speed(jd1, x1, u1, jd2, x2, u2, gm, pole, way, c3, v_arri
         end = min(left + BLOCK, jd2.shape[0])
         b, w2 = x2[:, left:end].copy(), u2[:, left:end].copy()
         scratch = np.empty((SCRATCH_ROWS, end - left))
-        a, v1, v2 = np.empty_like(b), np.empty_like(b), np.empty_like(b)
-        d1, d2 = np.empty(end - left), np.empty(end - left)
+        v1, v2, d2 = np.empty_like(b), np.empty_like(b), np.empty(end - left)
         norm_row(b, d2)
         tof, status = np.empty(end - left), np.empty(end - left, dtype=np.int8)
         for i in range(jd1.shape[0]):
-            _from_one_date(jd1[i], x1[:, i], jd2[left:end], a, d1, tof)
-            lambert_row(a, d1, b, d2, tof, gm, pole, way, 0, False, scratch, v1, v2, status)
+            _seconds_between(jd1[i], jd2[left:end], tof)
+            lambert_fan(x1[:, i], b, d2, tof, gm, pole, way, 0, False, scratch, v1, v2, status)
             _energy_row(v1, u1[:, i], v2, w2, c3[i, left:end], v_arrival[i, left:end])
 
 
-@njit(**PLAIN)
-def _from_one_date(jd1, x1, jd2, a, d1, tof):
-    """Times of flight in s from one date, its position and distance repeated."""
-    d1[:] = math.sqrt(x1[0] * x1[0] + x1[1] * x1[1] + x1[2] * x1[2])
+@njit(**ROW)
+def _seconds_between(jd1, jd2, tof):
     for j in range(jd2.shape[0]):
         tof[j] = (jd2[j] - jd1) * DAY_S
-    for k in range(3):
-        a[k, :] = x1[k]
 
 
 @njit(**ROW)

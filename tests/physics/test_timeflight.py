@@ -5,6 +5,7 @@ import pytest
 from mpmath import mp, mpf
 
 from porkgrid.physics.timeflight import (
+    LEAST_P_ROW,
     SETTLED,
     U_MAX_WIDE,
     first_step_row,
@@ -14,7 +15,6 @@ from porkgrid.physics.timeflight import (
 )
 
 EPS = float(np.finfo(float).eps)
-LEAST_P_ROW = 1e-3  # under this physics.lambert does not trust the rows
 
 
 def exact_shape(q):
@@ -82,15 +82,30 @@ def problems():
     return sigma, delta, parabolic * 10.0 ** rng.uniform(-0.5, 1.5, 2000)
 
 
+def last_step(problems, q):
+    """q after the last step, the error of the time before it, and how many it calls unsettled."""
+    sigma, delta, t = problems
+    error, p, h = np.empty_like(t), np.empty_like(t), np.empty_like(t)
+    unsettled = last_step_row(sigma, delta, t, q, error, p, h, True)
+    after = above_less(h, sigma, delta)
+    np.testing.assert_allclose(p, np.where(sigma > 0.0, 1.0 + sigma, delta) - sigma * after, atol=1e-12)
+    return after, np.abs(error), unsettled
+
+
+def above_less(h, sigma, delta):
+    """q from h = σ − u = a − q."""
+    return np.where(sigma > 0.0, 1.0 + sigma, delta) - h
+
+
 def steps(problems):
     """q after the start and both steps, with the error of the time before each of them."""
     sigma, delta, t = problems
-    q, first, second = np.empty_like(t), np.empty_like(t), np.empty_like(t)
+    q = np.empty_like(t)
     start_row(sigma, delta, t, q)
-    last_step_row(sigma, delta, t, q.copy(), first, True)
+    _, first, _ = last_step(problems, q)
     first_step_row(sigma, delta, t, q, True)
-    last_step_row(sigma, delta, t, q, second, True)
-    return q, np.abs(first), np.abs(second)
+    q, second, _ = last_step(problems, q)
+    return q, first, second
 
 
 def test_starting_values_are_within_a_few_per_cent_of_the_flight_time(problems):
@@ -101,15 +116,25 @@ def test_starting_values_are_within_a_few_per_cent_of_the_flight_time(problems):
 
 def test_the_error_a_step_reports_is_that_of_the_time_before_it(problems):
     sigma, delta, t = (each[:100] for each in problems)
-    q, reported = np.empty_like(t), np.empty_like(t)
+    q = np.empty_like(t)
     start_row(sigma, delta, t, q)
     times = [exact_time(*each) for each in zip(sigma, delta, q, strict=True)]
     exact = [float(mpf(wanted) / time - 1) for wanted, time in zip(t, times, strict=True)]
-    start = q.copy()
-    last_step_row(sigma, delta, t, q, reported, True)
-    in_reach = start < 1.0 + U_MAX_WIDE
+    _, reported, _ = last_step((sigma, delta, t), q)
+    in_reach = q < 1.0 + U_MAX_WIDE
     assert np.mean(in_reach) > 0.9
-    np.testing.assert_allclose(reported[in_reach], np.array(exact)[in_reach], rtol=1e-9, atol=1e-12)
+    np.testing.assert_allclose(reported[in_reach], np.abs(exact)[in_reach], rtol=1e-9, atol=1e-12)
+
+
+def test_the_last_step_counts_what_it_leaves_unsettled(problems):
+    sigma, delta, t = problems
+    q = np.empty_like(t)
+    start_row(sigma, delta, t, q)
+    first_step_row(sigma, delta, t, q, True)
+    after, error, unsettled = last_step(problems, q)
+    p = np.where(sigma > 0.0, 1.0 + sigma, delta) - sigma * after
+    expected = ~((error < SETTLED) & (after < 1.0 + U_MAX_WIDE) & (p > LEAST_P_ROW))
+    assert unsettled == np.count_nonzero(expected)
 
 
 def test_steps_are_cubic(problems):
