@@ -1,4 +1,4 @@
-"""The search for flyby dates equals exhaustive enumeration, made here of other parts: scipy finds periapses."""
+"""The search for flyby dates equals exhaustive enumeration, made here of other parts (scipy: periapses)."""
 
 from itertools import product
 
