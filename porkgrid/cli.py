@@ -5,6 +5,7 @@ from __future__ import annotations
 import sys
 import threading
 from enum import StrEnum
+from importlib import import_module
 from pathlib import Path
 from typing import TYPE_CHECKING, Annotated, Any
 
@@ -78,6 +79,8 @@ def sweep(
     from porkgrid.survey import sweep as engine
     from porkgrid.survey.plan import make_plan
 
+    # the figures' libraries load while kernels run, which leave Python alone
+    threading.Thread(target=import_module, args=("porkgrid.figures.draw",)).start()
     _compile(lambda: engine.warm_up(make_plan(request)))
     with terminal.sweep_progress(quiet=as_json) as report:
         survey = engine.sweep(request, out, workers, fresh=fresh, report=report)
@@ -297,7 +300,7 @@ def _compile(warm_up: Any) -> None:
     from porkgrid import terminal
 
     timer = threading.Timer(
-        1.0, terminal.say, ["compiling the kernels for this machine (once, under a minute) …"]
+        3.0, terminal.say, ["compiling the kernels for this machine (once, under a minute) …"]
     )
     timer.start()
     try:

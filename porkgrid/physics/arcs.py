@@ -29,11 +29,12 @@ def distance_range(
     one revolution, which pass both.
     """
     d1, d2 = np.sqrt(_dot(r1, r1)), np.sqrt(_dot(r2, r2))
-    down1, down2 = _dot(r1, v1) < 0.0, _dot(r2, v2) < 0.0
+    climb = _dot(r1, v1) / d1  # radial speed
+    down1, down2 = climb < 0.0, _dot(r2, v2) < 0.0
     alpha = 2.0 / d1 - _dot(v1, v1) / gm  # 1/a
     momentum = np.cross(r1, v1, axis=0)
     p = _dot(momentum, momentum) / gm
-    e = np.sqrt(np.maximum(1.0 - p * alpha, 0.0))
+    e = np.hypot(p / d1 - 1.0, np.sqrt(p / gm) * climb)  # e cos ν and e sin ν
     wrapped = full_turn | (down1 & down2 & (d2 > d1)) | (~down1 & ~down2 & (d2 < d1))
     periapsis = wrapped | (down1 & ~down2)
     apoapsis = (wrapped | (~down1 & down2)) & (alpha > 0.0)

@@ -62,9 +62,18 @@ def sweep(
         begun = folders.claim(folder, scenario, fresh)
         provenance = folders.read_provenance(folder) if begun else _begin(folder, plan)
         if provenance["state"] != folders.COMPLETE:
-            _fill(folder, plan, workers or os.cpu_count() or 1, report)
+            with ThreadPoolExecutor(1) as aside:
+                kernels = aside.submit(_kernels, plan)  # reads the whole kernel: the tiles need not wait
+                _fill(folder, plan, workers or os.cpu_count() or 1, report)
+                provenance["kernels"] = kernels.result()
         _finish(folder, plan, provenance)
     return open_survey(folder)
+
+
+def _kernels(plan: Plan) -> list[dict[str, str]]:
+    return [
+        {"name": name, "file": path.name, "sha256": sha256_of(path)} for name, path in plan.ephemeris.files
+    ]
 
 
 def _begin(folder: Path, plan: Plan) -> dict[str, Any]:
@@ -78,10 +87,6 @@ def _begin(folder: Path, plan: Plan) -> dict[str, Any]:
             name: version(name) for name in ("porkgrid", "numpy", "numba", "jplephem", "zarr", "xarray")
         }
         | {"python": platform.python_version()},
-        "kernels": [
-            {"name": name, "file": path.name, "sha256": sha256_of(path)}
-            for name, path in plan.ephemeris.files
-        ],
         "bodies": {table.body.name: table.body.motion for table in plan.tables},
         "grid": {"departure_dates": plan.shape[0], "arrival_dates": plan.shape[1]},
         "conventions": "km, km/s, deg; ICRF axes; epochs TDB; patched conics about the Sun as a point mass",
