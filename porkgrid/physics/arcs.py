@@ -40,7 +40,7 @@ def distance_range(
     apoapsis = (wrapped | (~down1 & down2)) & (alpha > 0.0)
     with np.errstate(divide="ignore", invalid="ignore"):
         least = np.where(periapsis, p / (1.0 + e), np.minimum(d1, d2))
-        greatest = np.where(apoapsis, p / (1.0 - e), np.maximum(d1, d2))
+        greatest = np.where(apoapsis, (1.0 + e) / alpha, np.maximum(d1, d2))
     none = np.isnan(p)
     return np.where(none, np.nan, least), np.where(none, np.nan, greatest)
 
