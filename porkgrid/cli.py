@@ -103,7 +103,9 @@ def chart(
     ] = None,
     formats: Formats = [Format.PNG],  # noqa: B006 - typer wants a list
 ) -> None:
-    """Draw figures of a survey into its figures folder: the chart and the limit map, or a candidate's.
+    """Draw figures of a survey into its figures folder.
+
+    The chart and the limit map, with maps of flyby dates and altitudes; or the figures of one candidate.
 
     Example: porkgrid chart surveys/ouzel-to-mars-2028 --of c3_km2_s2 --lines v_inf_arrival_km_s --format pdf
 
@@ -117,6 +119,7 @@ def chart(
     drawn += draw.draw_flybys_of(opened, flyby, names) if flyby is not None else []
     if path is None and flyby is None:
         drawn = draw.draw_figures(opened, of, lines, names)
+        drawn += draw.draw_flyby_maps(opened, names) if of is None and lines is None else []
     for each in drawn:
         print(each)
 
@@ -269,6 +272,8 @@ def _tell(survey: Survey, drawn: list[Path], as_json: bool) -> None:
     _print_candidates(survey, survey.candidates, survey.grid.attrs["rank_by"], as_json=False)
     for path in drawn:
         terminal.say(str(path))
+    if survey.plan.flybys:
+        terminal.say(f"flyby maps: porkgrid chart {survey.path}; a candidate's: with --path 1 --flyby 1")
     terminal.say(f"survey in {survey.path}")
 
 

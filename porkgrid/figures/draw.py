@@ -37,11 +37,17 @@ def draw_figures(survey: Survey, of: str | None, lines: str | None, formats: Seq
     stem = "chart" if usual else "-".join(["chart", *names])
     drawn = save_figure(chart, folder / stem, formats)
     drawn += save_figure(draw_limit_map(view, flag_shares(survey)), folder / "limits", formats)
-    if usual:
-        for name in map(str, survey.grid.data_vars):
-            if name.startswith("flyby") and name.endswith(("_epoch_jd_tdb", "_altitude_km")):
-                drawn += _draw_flyby_map(survey, name, formats)
     return drawn
+
+
+def draw_flyby_maps(survey: Survey, formats: Sequence[str]) -> list[Path]:
+    """Draw each flyby's date and altitude on the axes of the chart; nothing for a direct route."""
+    return [
+        path
+        for name in map(str, survey.grid.data_vars)
+        if name.startswith("flyby") and name.endswith(("_epoch_jd_tdb", "_altitude_km"))
+        for path in _draw_flyby_map(survey, name, formats)
+    ]
 
 
 def draw_path_of(survey: Survey, candidate: int, formats: Sequence[str]) -> list[Path]:

@@ -23,7 +23,7 @@ from porkgrid.survey.measures import ENDS, Measure, default_rank, features_of, m
 # A tile is a chunk of the store: 2^17 cells keep a tile's arrays at a megabyte each.
 TILE_COLUMNS = 1024
 TILE_CELLS = 2**17
-SEARCH_TILES = 32
+SEARCH_TILES = 12
 
 
 @dataclass(frozen=True)
