@@ -24,6 +24,11 @@ ROUTES = {
         ("2029-10-10", "2030-03-20", "2031-01-15", "2034-01-01"),
         (7, 5, 6, 60),
     ),
+    "EVVEJ": (
+        ("earth", "venus", "venus", "earth", "jupiter"),
+        ("2032-12-13", "2033-03-26", "2034-02-23", "2035-06-02", "2038-05-11"),
+        (4, 4, 4, 4, 8),
+    ),
 }
 ORBIT = "{ periapsis_altitude_km = 300, apoapsis_altitude_km = 300 }"
 
@@ -162,6 +167,14 @@ def test_a_route_with_one_flyby_is_the_best_of_all_flyby_dates_and_leg_options(
 def test_a_chain_of_two_flybys_is_the_best_of_all_dates_between(folder, burn, limits):
     plan = plan_of(folder, "EVEJ", 4, burn, limits, 0)
     agree(searched(plan).cost, enumerated(plan, burn, limits, lambda c3, dv, route: dv))
+
+
+def test_a_chain_of_three_flybys_with_revolutions_is_the_best_of_all_dates_between(folder):
+    """The two-year route to Jupiter of bench_routes.py, cut down to three dates an encounter."""
+    plan = plan_of(folder, "EVVEJ", 3, 1.0, {}, 1)
+    expected = enumerated(plan, 1.0, {}, lambda c3, dv, route: dv)
+    assert np.isfinite(expected).any()
+    agree(searched(plan).cost, expected)
 
 
 def test_the_enumeration_finds_routes_at_all(folder):
