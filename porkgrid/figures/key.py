@@ -142,7 +142,10 @@ def draw_candidate_table(
     rows = _dates_and_flights(candidates[:shown])
     right = column.left + max(_LEFT_PART * column.width, max((_width(cells) for cells in rows), default=0.0))
     value_room = column.right - right - 0.15
-    head = shorten(measured.caption, value_room, SMALL_PT) if measured.name in candidates else ""
+    # the unit stands at the colour bar too, and goes where the column is too narrow for it
+    fits = width_in(measured.caption, SMALL_PT) <= value_room
+    head = shorten(measured.caption if fits else measured.label, value_room, SMALL_PT)
+    head = head if measured.name in candidates else ""
 
     column.y -= _ROW
     _table_heads(column, rows[:1], right, head)
