@@ -22,6 +22,7 @@ LEVELS = [
     {"scenario"},
     {"survey"},
     {"figures", "handoff", "page", "terminal"},
+    {"commands"},
     {"cli"},
 ]
 LEVEL_OF = {room: level for level, rooms in enumerate(LEVELS) for room in rooms}

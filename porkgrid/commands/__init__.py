@@ -1,0 +1,1 @@
+"""The commands: each parses its arguments, calls the engine and prints."""

@@ -1,0 +1,44 @@
+"""porkgrid chart: figures of a survey."""
+
+from __future__ import annotations
+
+from typing import Annotated
+
+import typer
+
+from porkgrid.commands.arguments import Format, Formats, SurveyFolder
+
+
+def chart(
+    survey: SurveyFolder,
+    of: Annotated[
+        str | None, typer.Option(help="Measure shown as colour; by default the rank measure.")
+    ] = None,
+    lines: Annotated[str | None, typer.Option(help="Measure shown as lines.")] = None,
+    path: Annotated[
+        int | None, typer.Option(metavar="N", help="Draw the path of candidate N instead.")
+    ] = None,
+    flyby: Annotated[
+        int | None, typer.Option(metavar="N", help="Draw the flybys of candidate N instead.")
+    ] = None,
+    formats: Formats = [Format.PNG],  # noqa: B006 - typer wants a list
+) -> None:
+    """Draw figures of a survey into its figures folder.
+
+    The chart and the limit map, with maps of flyby dates and altitudes; or the figures of one candidate.
+
+    Example: porkgrid chart surveys/ouzel-to-mars-2028 --of c3_km2_s2 --lines v_inf_arrival_km_s --format pdf
+
+    Example: porkgrid chart surveys/godwit-by-venus-to-mars-2034 --path 1 --flyby 1
+    """
+    from porkgrid.figures import draw
+    from porkgrid.survey.surveys import open_survey
+
+    opened, names = open_survey(survey), [each.value for each in formats]
+    drawn = draw.draw_path_of(opened, path, names) if path is not None else []
+    drawn += draw.draw_flybys_of(opened, flyby, names) if flyby is not None else []
+    if path is None and flyby is None:
+        drawn = draw.draw_figures(opened, of, lines, names)
+        drawn += draw.draw_flyby_maps(opened, names) if of is None and lines is None else []
+    for each in drawn:
+        print(each)

@@ -1,0 +1,142 @@
+"""porkgrid sweep, porkgrid check: what a scenario would cost, and the sweep itself."""
+
+from __future__ import annotations
+
+import threading
+from importlib import import_module
+from pathlib import Path
+from typing import TYPE_CHECKING, Annotated, Any
+
+import typer
+
+from porkgrid.commands.arguments import AsJson, Format, Formats, ScenarioFile
+from porkgrid.commands.rank import print_candidates
+
+if TYPE_CHECKING:
+    from porkgrid.survey.surveys import Survey
+
+
+def sweep(
+    scenario: ScenarioFile,
+    out: Annotated[Path | None, typer.Option(help="Survey folder; by default surveys/NAME.")] = None,
+    workers: Annotated[int | None, typer.Option(min=1, help="Threads; by default one per core.")] = None,
+    fresh: Annotated[bool, typer.Option("--fresh", help="Replace a survey that is there already.")] = False,
+    formats: Formats = [Format.PNG],  # noqa: B006 - typer wants a list
+    as_json: AsJson = False,
+) -> None:
+    """Sweep a scenario: solve every pair of dates, rank them and draw the charts.
+
+    An interrupted sweep goes on where it stopped when the same command is given again.
+
+    Example: porkgrid sweep scenarios/earth-mars-2028.toml
+    """
+    from porkgrid.survey.admit import load_scenario
+
+    request = load_scenario(scenario)
+    from porkgrid import terminal
+    from porkgrid.survey import sweep as engine
+    from porkgrid.survey.plan import make_plan
+
+    # the figures' libraries load while kernels run, which leave Python alone
+    threading.Thread(target=import_module, args=("porkgrid.figures.draw",)).start()
+    _compile(lambda: engine.warm_up(make_plan(request)))
+    with terminal.sweep_progress(quiet=as_json) as report:
+        survey = engine.sweep(request, out, workers, fresh=fresh, report=report)
+    drawn = _draw(survey, None, None, formats)
+    _tell(survey, drawn, as_json)
+
+
+def check(scenario: ScenarioFile, as_json: AsJson = False) -> None:
+    """Validate a scenario and say what a sweep would cost on this machine.
+
+    Example: porkgrid check scenarios/earth-mars-2028.toml
+    """
+    from porkgrid.survey.admit import load_scenario
+
+    request = load_scenario(scenario)
+    from dataclasses import asdict
+
+    from porkgrid import terminal
+    from porkgrid.survey.cost import predict
+    from porkgrid.survey.plan import make_plan
+    from porkgrid.survey.sweep import warm_up
+
+    plan = make_plan(request)
+    _compile(lambda: warm_up(plan))
+    cost = predict(plan)
+    if as_json:
+        terminal.print_json(
+            {"scenario": str(scenario), "name": request.name, "route": plan.route} | asdict(cost)
+        )
+        return
+    n, m = plan.shape
+    rows = [
+        ("scenario", f"{request.name}: {plan.route}"),
+        ("grid", f"{n:,} departure × {m:,} arrival dates = {cost.cells:,} cells in {cost.tiles:,} tiles"),
+        ("Lambert solves", f"{cost.lambert_solves:,}"),
+        ("measures kept", str(len(plan.stored))),
+        (
+            "time",
+            f"about {_duration(cost.seconds)} with {cost.workers} workers, after a few seconds to start",
+        ),
+        ("memory", f"about {cost.memory_bytes / 1e6:,.0f} MB at the peak"),
+        ("disk", f"about {cost.disk_bytes / 1e6:,.1f} MB"),
+    ]
+    terminal.print_table(("", "the scenario is valid; a sweep would cost"), rows)
+
+
+def _draw(survey: Survey, of: str | None, lines: str | None, formats: list[Format]) -> list[Path]:
+    from porkgrid.figures.draw import draw_figures
+
+    return draw_figures(survey, of, lines, [each.value for each in formats])
+
+
+def _tell(survey: Survey, drawn: list[Path], as_json: bool) -> None:
+    """Print what a sweep has come to."""
+    from porkgrid import terminal
+    from porkgrid.survey.closed import explain_closed
+
+    closed = explain_closed(survey)
+    for line in closed:
+        terminal.say(line)
+    if as_json:
+        facts: dict[str, Any] = {
+            key: survey.provenance[key] for key in ("name", "route", "cells", "cells_allowed", "seconds")
+        }
+        terminal.print_json(
+            facts
+            | {
+                "survey": str(survey.path),
+                "figures": [str(path) for path in drawn],
+                "closed": closed,
+                "candidates": survey.candidates.to_dict("records"),
+            }
+        )
+        return
+    print_candidates(survey, survey.candidates, survey.grid.attrs["rank_by"], as_json=False)
+    for path in drawn:
+        terminal.say(str(path))
+    if survey.plan.flybys:
+        terminal.say(f"flyby maps: porkgrid chart {survey.path}; a candidate's: with --path 1 --flyby 1")
+    terminal.say(f"survey in {survey.path}")
+
+
+def _compile(warm_up: Any) -> None:
+    """Have the kernels ready; say so where that takes a while, as on the first run on a machine."""
+    from porkgrid import terminal
+
+    timer = threading.Timer(
+        3.0, terminal.say, ["compiling the kernels for this machine (once, under a minute) …"]
+    )
+    timer.start()
+    try:
+        warm_up()
+    finally:
+        timer.cancel()
+
+
+def _duration(seconds: float) -> str:
+    if seconds < 90:
+        return f"{seconds:.1f} s"
+    minutes = seconds / 60
+    return f"{minutes:.0f} min" if minutes < 90 else f"{minutes / 60:.1f} h"
