@@ -11,6 +11,7 @@ import typer
 
 from porkgrid.commands.arguments import AsJson, Format, Formats, ScenarioFile
 from porkgrid.commands.rank import print_candidates
+from porkgrid.errors import RequestError
 
 if TYPE_CHECKING:
     from porkgrid.survey.surveys import Survey
@@ -94,8 +95,10 @@ def _draw(survey: Survey, of: str | None, lines: str | None, formats: list[Forma
 def _tell(survey: Survey, drawn: list[Path], as_json: bool) -> None:
     """Print what a sweep has come to."""
     from porkgrid import terminal
-    from porkgrid.survey.closed import explain_closed
+    from porkgrid.survey.closed import explain_closed, stages_out_of_reach
 
+    if short := stages_out_of_reach(survey):
+        raise RequestError(*(f"{survey.scenario.path}: stack: {line}" for line in short))
     closed = explain_closed(survey)
     for line in closed:
         terminal.say(line)

@@ -93,7 +93,8 @@ def draw_chart(
 
 def _order(view: xr.Dataset, of: str) -> str:
     """Return which values are best: as the survey ranks, for the measure it ranks by, else the least."""
-    return str(view.attrs.get("rank_order", "least")) if view.attrs.get("rank_by") == of else "least"
+    order = view.attrs.get("rank_order") if view.attrs.get("rank_by") == of else view[of].attrs.get("better")
+    return str(order or "least")
 
 
 def _values_that_matter(measured: Measured, ground: Ground) -> np.ndarray:

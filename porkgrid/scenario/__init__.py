@@ -13,16 +13,19 @@ from pydantic import BaseModel, ConfigDict
 from porkgrid.scenario import sections
 from porkgrid.scenario.bodies import BodySpec, body_of
 from porkgrid.scenario.faults import Fault
-from porkgrid.scenario.parts import Encounter, Flyby, Leg, Limit, Orbit, Parking, Rank
+from porkgrid.scenario.parts import Capture, Encounter, Flyby, Leg, Limit, Orbit, Parking, Rank
 from porkgrid.scenario.sections import Outline
 from porkgrid.scenario.text import parse_toml, read_text
+from porkgrid.scenario.vehicles import Launcher, Spacecraft, Stack, Stage
 from porkgrid.sky.bodies import Body
 
 __all__ = [
     "BodySpec",
+    "Capture",
     "Draft",
     "Encounter",
     "Flyby",
+    "Launcher",
     "Leg",
     "Limit",
     "Orbit",
@@ -30,6 +33,9 @@ __all__ = [
     "Parking",
     "Rank",
     "Scenario",
+    "Spacecraft",
+    "Stack",
+    "Stage",
     "body_of",
     "read_scenario",
 ]
@@ -48,6 +54,9 @@ class Scenario(BaseModel):
     legs: tuple[Leg, ...]  # one fewer than encounters
     limits: dict[str, Limit]
     rank: Rank
+    launcher: Launcher | None = None
+    spacecraft: Spacecraft | None = None
+    stack: Stack | None = None
     kernels: tuple[Path, ...]
     bodies: dict[str, BodySpec]
     measures: tuple[str, ...] | None  # to store; None: every one
@@ -78,6 +87,7 @@ class Draft:
     legs: tuple[Leg | None, ...] = ()
     limits: tuple[str, ...] = ()  # names of measures, whatever their bounds are worth
     rank_by: str | None = None
+    vehicles: Mapping[str, Any] = field(default_factory=dict)  # the tables as given, right or wrong
     measures: tuple[str, ...] = ()
     kernels: tuple[Path, ...] = ()
     bodies: Mapping[str, BodySpec | None] = field(default_factory=dict)
@@ -105,11 +115,12 @@ def _draft(path: Path, text: str, table: dict[str, Any], beside: Path) -> Draft:
     legs, leg_faults = sections.read_legs(table, len(outlines))
     limits, limit_faults = sections.read_limits(table)
     rank, rank_by, rank_faults = sections.read_rank(table)
+    vehicles, vehicle_faults = sections.read_vehicles(table, outlines, beside)
     bodies, body_faults = sections.read_bodies(table)
     kernel_names, kernel_faults = sections.read_texts(table, "kernels", '["heron.bsp"]')
     measures, measure_faults = sections.read_texts(table, "measures", '["c3_km2_s2", "tof_days"]')
     faults = [*sections.unknown_keys(table), *heading_faults, *encounter_faults, *leg_faults, *limit_faults]
-    faults += [*rank_faults, *kernel_faults, *body_faults, *measure_faults]
+    faults += [*rank_faults, *vehicle_faults, *kernel_faults, *body_faults, *measure_faults]
     kernels = tuple(beside / each for each in kernel_names or ())  # absolute paths stay as they are
     scenario = None
     if heading is not None and not faults:
@@ -120,6 +131,9 @@ def _draft(path: Path, text: str, table: dict[str, Any], beside: Path) -> Draft:
             legs=tuple(leg for leg in legs if leg),
             limits={name: limit for name, limit in limits.items() if limit},
             rank=rank or Rank(),
+            launcher=vehicles.launcher,
+            spacecraft=vehicles.spacecraft,
+            stack=vehicles.stack,
             kernels=kernels,
             bodies={name: body for name, body in bodies.items() if body},
             measures=None if measures is None else tuple(measures),
@@ -133,6 +147,7 @@ def _draft(path: Path, text: str, table: dict[str, Any], beside: Path) -> Draft:
         legs=tuple(legs),
         limits=tuple(limits),
         rank_by=rank_by,
+        vehicles={key: table[key] for key in ("launcher", "spacecraft", "stack") if key in table},
         measures=tuple(measures or ()),
         kernels=kernels,
         bodies=bodies,

@@ -95,6 +95,8 @@ def _sentence(error: Any, model: type[BaseModel], location: list[str]) -> str:
             return f"must be above {context['gt']:g}, not {given}"
         case "greater_than_equal":
             return f"must be {context['ge']:g} or more, not {given}"
+        case "less_than":
+            return f"must be below {context['lt']:g}, not {given}"
         case "less_than_equal":
             return f"must be {context['le']:g} or less, not {given}"
         case "literal_error":

@@ -84,6 +84,34 @@ class Parking(Orbit):
     inclination_deg: float | None = Field(default=None, ge=0, le=180)
 
 
+class Capture(Part):
+    """The orbit to be captured into: its apoapsis or eccentricity, and its periapsis or the cheapest one."""
+
+    periapsis_altitude_km: float | None = Field(default=None, ge=0, examples=["400"])
+    apoapsis_altitude_km: float | None = Field(default=None, ge=0, examples=["33000"])
+    eccentricity: float | None = Field(default=None, ge=0, lt=1, validate_default=True, examples=["0.8"])
+
+    @field_validator("apoapsis_altitude_km")
+    @classmethod
+    def _above_periapsis(cls, value: float | None, info: ValidationInfo) -> float | None:
+        periapsis = info.data.get("periapsis_altitude_km")
+        if value is not None and periapsis is not None and value < periapsis:
+            raise refusal(f"{value:g} is below the periapsis altitude of {periapsis:g}; swap them")
+        return value
+
+    @field_validator("eccentricity")
+    @classmethod
+    def _one_shape(cls, value: float | None, info: ValidationInfo) -> float | None:
+        if "apoapsis_altitude_km" not in info.data:
+            return value
+        apoapsis = info.data["apoapsis_altitude_km"]
+        if value is not None and apoapsis is not None:
+            raise refusal("is given beside apoapsis_altitude_km; either says the orbit's shape, give one")
+        if value is None and apoapsis is None:
+            raise refusal("missing; give apoapsis_altitude_km, or eccentricity (0 is a circle)")
+        return value
+
+
 class Flyby(Part):
     """Bounds on a flyby: least altitude (None: the body's own) and largest burn at its periapsis."""
 
@@ -103,7 +131,7 @@ class Encounter(Part):
     step_days: float = Field(default=1.0, gt=0, validate_default=True)
     parking: Parking | None = Field(default=None, examples=[ORBIT_EXAMPLE])
     flyby: Flyby | None = Field(default=None, examples=["{ min_altitude_km = 300 }"])
-    capture: Orbit | None = Field(default=None, examples=[ORBIT_EXAMPLE])
+    capture: Capture | None = Field(default=None, examples=[ORBIT_EXAMPLE])
 
     @field_validator("last")
     @classmethod
@@ -163,10 +191,10 @@ class Limit(Part):
 
 
 class Rank(Part):
-    """How candidates are listed; `by` None leaves the measure to the engine."""
+    """How candidates are listed; `by` None leaves the measure to the engine, `order` None to the measure."""
 
     by: str | None = None
-    order: Literal["least", "most"] = "least"
+    order: Literal["least", "most"] | None = None
     keep: int = Field(default=20, ge=1, le=10_000)
     apart_days: float = Field(default=10.0, ge=0)
 

@@ -9,6 +9,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass
 from datetime import date
+from pathlib import Path
 from typing import Any, TypeVar
 
 from pydantic import Field, ValidationError, field_validator
@@ -16,12 +17,27 @@ from pydantic import Field, ValidationError, field_validator
 from porkgrid.scenario.bodies import BodySpec, combination_faults
 from porkgrid.scenario.faults import Fault, broken_fields, faults_of, nearest, printable, shown
 from porkgrid.scenario.parts import LONGEST_NAME, Encounter, Flyby, Leg, Limit, Part, Rank, refusal
+from porkgrid.scenario.vehicles import (
+    MAX_STAGES,
+    Launcher,
+    LauncherFiles,
+    Spacecraft,
+    Stack,
+    Stage,
+    manoeuvres_of,
+    read_launcher_tables,
+    stage_faults,
+)
+from porkgrid.scenario.vehicles import (
+    combination_faults as vehicle_faults,
+)
 from porkgrid.sky.bodies import BODIES
 
 MAX_ENCOUNTERS = 10  # practice: flown designs have up to about that many
 MAX_LIMITS = 28  # a bit each in flags of 32 bits, four kept for reasons that are no limits
 
-SECTIONS = ("name", "description", "encounter", "leg", "limits", "rank", "kernels", "bodies", "measures")
+SECTIONS = ("name", "description", "encounter", "leg", "limits", "rank", "launcher", "spacecraft", "stack",
+            "kernels", "bodies", "measures")  # fmt: skip
 
 P = TypeVar("P", bound=Part)
 
@@ -158,6 +174,66 @@ def read_rank(table: Mapping[str, Any]) -> tuple[Rank | None, str | None, list[F
     given, faults = _table(table, "rank")
     rank, wrong, right = _validated(Rank, given, "rank.")
     return rank, right.get("by"), [*faults, *wrong]
+
+
+@dataclass(frozen=True)
+class Vehicles:
+    """What flies, as far as it could be read."""
+
+    launcher: Launcher | None = None
+    spacecraft: Spacecraft | None = None
+    stack: Stack | None = None
+
+
+def read_vehicles(
+    table: Mapping[str, Any], outlines: list[Outline], beside: Path
+) -> tuple[Vehicles, list[Fault]]:
+    """Launcher with its tables, spacecraft and stack."""
+    launcher = None
+    faults: list[Fault] = []
+    if "launcher" in table:
+        given, faults = _table(table, "launcher")
+        files, wrong, _ = _validated(LauncherFiles, given, "launcher.")
+        faults = faults + wrong
+        if files is not None and not faults:
+            launcher, faults = read_launcher_tables(files, beside)
+    spacecraft = None
+    if "spacecraft" in table:
+        given, wrong = _table(table, "spacecraft")
+        faults += wrong
+        spacecraft, wrong, _ = _validated(Spacecraft, given, "spacecraft.")
+        faults += wrong
+    stack, wrong = _read_stack(table, outlines) if "stack" in table else (None, [])
+    faults += wrong
+    parking = bool(outlines) and outlines[0].parking
+    faults += vehicle_faults(table, spacecraft, parking)
+    return Vehicles(launcher, spacecraft, stack), faults
+
+
+class _Payload(Part):
+    payload_kg: float = Field(gt=0, examples=["1200"])
+
+
+def _read_stack(table: Mapping[str, Any], outlines: list[Outline]) -> tuple[Stack | None, list[Fault]]:
+    given, faults = _table(table, "stack")
+    payload, wrong, _ = _validated(_Payload, {k: v for k, v in given.items() if k != "stage"}, "stack.")
+    faults = [*faults, *wrong]
+    listed, wrong = _tables(given, "stage")
+    faults += [Fault(f"stack.{fault.key}", fault.text) for fault in wrong]
+    if not listed and not wrong:
+        faults.append(Fault("stack.stage", "missing; give each under [[stack.stage]], the lowest first"))
+    if len(listed) > MAX_STAGES:
+        faults.append(Fault("stack.stage", f"{len(listed)} are given; give {MAX_STAGES} or fewer"))
+    stages = []
+    for number, each in enumerate(listed[:MAX_STAGES], start=1):
+        stage, wrong, _ = _validated(Stage, each, f"stack.stage {number}, ")
+        stages.append(stage)
+        faults += wrong
+    capture = bool(outlines) and outlines[-1].capture
+    faults += stage_faults(stages, manoeuvres_of(len(outlines), capture))
+    if payload is None or faults:
+        return None, faults
+    return Stack(payload_kg=payload.payload_kg, stages=tuple(each for each in stages if each)), []
 
 
 def read_bodies(table: Mapping[str, Any]) -> tuple[dict[str, BodySpec | None], list[Fault]]:

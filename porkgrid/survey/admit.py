@@ -13,7 +13,9 @@ from porkgrid.scenario.faults import Fault, printable
 from porkgrid.sky.bodies import BODIES, Body, find_body
 from porkgrid.sky.epochs import iso_from_jd, jd_from_date
 from porkgrid.sky.kernel import Ephemeris, open_ephemeris
-from porkgrid.survey.measures import FEATURES, features_of, measures_for, why_absent
+from porkgrid.survey.masses import mass_features, stage_shortfalls
+from porkgrid.survey.measures import ROUTE_FEATURES, features_of, measures_for, why_absent
+from porkgrid.survey.orbits import parking_orbit
 
 # A body per encounter, None where the file's is unknown or at fault
 Route = list[Body | None]
@@ -44,6 +46,7 @@ def _engine_faults(draft: Draft) -> Iterator[Fault]:
     yield from _window_faults(draft.outlines)
     yield from _kernel_faults(draft, route)
     yield from _measure_faults(draft, route)
+    yield from _stack_faults(draft, route)
 
 
 def _body(outline: Outline, own: Mapping[str, Body], draft: Draft) -> Body | None:
@@ -83,6 +86,10 @@ def _lacking(outline: Outline, body: Body, prefix: str) -> Iterator[Fault]:
     for key, orbit in wanted.items():
         if orbit is not None and missing:
             yield Fault(f"{prefix}{key}", f"needs {missing} of {body.name}; give it in [bodies.{body.name}]")
+    capture = encounter.capture
+    if capture and capture.periapsis_altitude_km is None and body.min_flyby_altitude_km is None:
+        what = f"missing, and {body.name} has no usual least altitude; give it"
+        yield Fault(f"{prefix}capture.periapsis_altitude_km", what)
     if encounter.parking and encounter.parking.inclination_deg is not None and body.pole is None:
         what = f"needs the pole of {body.name}, which is not known; leave the inclination out"
         yield Fault(f"{prefix}parking.inclination_deg", what)
@@ -162,8 +169,38 @@ def _features(draft: Draft, route: Route) -> frozenset[str]:
     """Features of the route; where a body is unknown, all that it could have."""
     parking = bool(draft.outlines) and draft.outlines[0].parking
     capture = bool(draft.outlines) and draft.outlines[-1].capture
+    masses = _masses_given(draft)
     ends = [body for body in (route[0], route[-1]) if body is not None] if route else []
     if len(ends) == 2:
-        return features_of(ends, parking, capture)
+        return features_of(ends, parking, capture, masses)
     given = {"parking": parking, "capture": capture}
-    return frozenset(name for name in FEATURES if given.get(name, True))
+    return frozenset(name for name in ROUTE_FEATURES if given.get(name, True)) | masses
+
+
+def _masses_given(draft: Draft) -> frozenset[str]:
+    """Mass features of what the file gives, right or wrong."""
+    spacecraft, stack = draft.vehicles.get("spacecraft"), draft.vehicles.get("stack")
+    stages = stack.get("stage") if isinstance(stack, dict) else None
+    listed = stages if isinstance(stages, list) else []
+    ascent = [isinstance(stage, dict) and bool(stage.get("ascent_dv_km_s")) for stage in listed]
+    dry = isinstance(spacecraft, dict) and "dry_mass_kg" in spacecraft
+    return mass_features(
+        "launcher" in draft.vehicles,
+        dry if "spacecraft" in draft.vehicles else None,
+        ascent if "stack" in draft.vehicles else None,
+    )
+
+
+def _stack_faults(draft: Draft, route: Route) -> Iterator[Fault]:
+    """Faults for stages that cannot reach what every date asks of them."""
+    scenario, body = draft.scenario, route[0] if route else None
+    if scenario is None or scenario.stack is None or body is None:
+        return
+    orbit = scenario.encounters[0].parking
+    if orbit is None or body.radius_km is None or body.gm_km3_s2 is None:
+        return
+    for number, asked, reach in stage_shortfalls(scenario.stack, parking_orbit(orbit, body), body):
+        what = f"must give {asked:.3f} km/s at least, and {reach:.3f} is more than any size of it gives"
+        remedy = "a higher isp_s, a lower structural_fraction or another stage"
+        short = f"short by {asked - reach:.3f} km/s"
+        yield Fault(f"stack.stage {number}", f"{what} ({short}); give {remedy}")

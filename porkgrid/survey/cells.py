@@ -8,21 +8,18 @@ from __future__ import annotations
 
 from dataclasses import dataclass, field
 from functools import cached_property
+from typing import TYPE_CHECKING
 
 import numpy as np
 
+from porkgrid.physics import burns
 from porkgrid.sky.bodies import Body, gm_of, pole_axes
 from porkgrid.sky.states import StateTable
 from porkgrid.survey.legs import LegCells
+from porkgrid.survey.orbits import ApsisOrbit, ShapeOrbit
 
-
-@dataclass(frozen=True)
-class ApsisOrbit:
-    """A parking or capture orbit: apsis radii in km, inclination in radians (None: as the asymptote asks)."""
-
-    periapsis_km: float
-    apoapsis_km: float
-    inclination_rad: float | None = None
+if TYPE_CHECKING:
+    from porkgrid.survey.masses import Budget, Masses
 
 
 @dataclass
@@ -41,6 +38,13 @@ class FlybyCells:
 
         return periapsis_radius(self.v_in, self.v_out, gm_of(self.body))
 
+    @cached_property
+    def burn_km_s(self) -> np.ndarray:
+        """(n, m) burn at that periapsis, along the velocity."""
+        from porkgrid.physics.flyby import burn
+
+        return burn(self.v_in, self.v_out, gm_of(self.body))
+
 
 @dataclass
 class Cells:
@@ -51,8 +55,9 @@ class Cells:
     earth_at_arrival: np.ndarray  # (3, m) km, heliocentric
     legs: list[LegCells]
     parking: ApsisOrbit | None = None
-    capture: ApsisOrbit | None = None
+    capture: ApsisOrbit | ShapeOrbit | None = None
     flybys: list[FlybyCells] = field(default_factory=list)
+    masses: Masses | None = None
 
     @cached_property
     def departure_axes(self) -> np.ndarray:
@@ -83,6 +88,61 @@ class Cells:
     def v_inf_arrival(self) -> np.ndarray:
         """(n, m) km/s."""
         return np.sqrt(_square(self.legs[-1].v_inf_in))
+
+    @cached_property
+    def dv_departure(self) -> np.ndarray:
+        """(n, m) km/s, burn at the parking orbit's periapsis."""
+        orbit, gm = self.parking, gm_of(self.departure.body)
+        assert orbit is not None
+        apsides = (orbit.periapsis_km, orbit.apoapsis_km)
+        if orbit.inclination_rad is None:
+            return burns.apsis_burn(self.v_inf_departure, *apsides, gm)
+        return burns.departure_burn(
+            self.v_inf_departure, self.departure_declination_rad, *apsides, orbit.inclination_rad, gm
+        )
+
+    @cached_property
+    def capture_periapsis_km(self) -> np.ndarray:
+        """(n, m), or () where it is one for all cells: radius of the capture orbit's periapsis."""
+        orbit = self.capture
+        assert orbit is not None
+        if isinstance(orbit, ApsisOrbit):
+            return np.asarray(orbit.periapsis_km)
+        cheapest = burns.cheapest_periapsis(self.v_inf_arrival, orbit.eccentricity, gm_of(self.arrival.body))
+        return np.maximum(cheapest, orbit.lowest_km)
+
+    @cached_property
+    def dv_capture(self) -> np.ndarray:
+        """(n, m) km/s, burn at the capture orbit's periapsis."""
+        orbit, gm = self.capture, gm_of(self.arrival.body)
+        assert orbit is not None
+        if isinstance(orbit, ApsisOrbit):
+            return burns.apsis_burn(self.v_inf_arrival, orbit.periapsis_km, orbit.apoapsis_km, gm)
+        return burns.shape_burn(self.v_inf_arrival, self.capture_periapsis_km, orbit.eccentricity, gm)
+
+    @cached_property
+    def dv_after_departure(self) -> np.ndarray:
+        """(n, m) km/s, sum of the burns at flybys and at capture."""
+        total = np.zeros_like(self.v_inf_arrival) if self.capture is None else self.dv_capture
+        for flyby in self.flybys:
+            total = total + flyby.burn_km_s
+        return total
+
+    def burn_named(self, name: str) -> np.ndarray:
+        """(n, m) km/s of "departure", "flyby1", … or "capture"."""
+        if name == "departure":
+            return self.dv_departure
+        if name == "capture":
+            return self.dv_capture
+        return self.flybys[int(name.removeprefix("flyby")) - 1].burn_km_s
+
+    @cached_property
+    def budget(self) -> Budget:
+        """Masses of the cells."""
+        from porkgrid.survey.masses import Budget
+
+        assert self.masses is not None
+        return Budget(self.masses, self)
 
     @cached_property
     def departure_declination_rad(self) -> np.ndarray:

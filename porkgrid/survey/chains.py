@@ -60,7 +60,7 @@ def prepare(plan: Plan) -> Search:
     tables = [leg_table(plan, n, plan.tables[n - 1], plan.tables[n]) for n in range(2, legs + 1)]
     out = [_ends_out(table, plan.tables[n], y_min[n - 1]) for n, table in enumerate(tables, start=1)]
     into = [_ends_in(table, plan.tables[n], y_min[n - 1]) for n, table in enumerate(tables[:-1], start=2)]
-    weight = 1.0 if plan.objective.scope == SUM else TIE_WEIGHT
+    weight = 1.0 if plan.objective.first_leg is not None else TIE_WEIGHT
     dv_max = _dv_max(plan)
     return Search(tables, into, out, [bound.as_array(weight, dv_max) for bound in bounds], y_min)
 
@@ -121,7 +121,7 @@ def _from_one_date(
     ends, cost_in, trail = legs_in, legs_in.cost, []
     stuck, burnt = 0, np.zeros(flybys, dtype=bool)
     # a route that costs more than its limit on the way is closed already
-    ceiling = np.nextafter(_dv_max(plan), math.inf) if plan.objective.scope == SUM else math.inf
+    ceiling = np.nextafter(_dv_max(plan), math.inf) if plan.objective.name == "dv_total_km_s" else math.inf
     for k, out in enumerate(search.out):
         last = k == flybys - 1
         legs = search.tables[k].valid.size // len(plan.tables[k + 1].jd)  # options × next dates

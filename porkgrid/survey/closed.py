@@ -33,6 +33,23 @@ def explain_closed(survey: Survey) -> list[str]:
     return lines + (openers or [_nearest_cell(survey)])
 
 
+def stages_out_of_reach(survey: Survey) -> list[str]:
+    """Stages that no flight of the survey can do with, and by how much; empty where some flight can."""
+    totals = survey.provenance["cells_forbidden_by"]
+    flown = survey.provenance["cells"] - sum(totals[reason] for reason in REASONS)
+    lines = []
+    for bound in survey.plan.bounds:
+        if bound.name.endswith("_reach") and flown and totals[bound.name] == flown:
+            least = min(float(np.nanmin(values)) for values, _ in row_bands(survey, bound.measure.name))
+            assert bound.most is not None
+            lines.append(
+                f"{bound.title}: the least that any date asks of it is {least:.3f} km/s, "
+                f"{least - bound.most:.3f} km/s more; give a higher isp_s, a lower structural_fraction or "
+                "another stage"
+            )
+    return lines
+
+
 def _would_open_a_route(plan: Plan, bound: Bound) -> str | None:
     """A value of one limit at which a route with flybys passes: that of the best one found without the limit.
 
@@ -87,7 +104,7 @@ def _nearest_cell(survey: Survey) -> str:
 
 
 def _bit(survey: Survey, bound: Bound) -> int:
-    return survey.grid[BLOCKED_BY].attrs["flag_meanings"].split().index(bound.measure.name)
+    return survey.grid[BLOCKED_BY].attrs["flag_meanings"].split().index(bound.name)
 
 
 def _beyond(value: float, end: str) -> float:

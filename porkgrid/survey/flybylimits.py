@@ -75,7 +75,7 @@ def _limit_faults(plan: Plan) -> Iterator[str]:
                     f"limits, {name}: {end} asks that some leg comes that near or far, which a search of "
                     f"legs cannot know; give {other}, or limit one leg, such as leg1_{name}"
                 )
-        if bound.measure.scope == SUM and plan.flybys > 1 and plan.objective.scope != SUM:
+        if bound.measure.scope == SUM and plan.flybys > 1 and plan.objective.name != name:
             yield (
                 f"limits, {name}: with several flybys it can be honoured only where {name} is what is "
                 f"ranked; rank by {name}, or limit dv_departure_km_s and the burns"

@@ -17,7 +17,7 @@ from porkgrid.survey.chains import Choice, Search, flyby_bounds, search_block
 from porkgrid.survey.legs import LegCells
 from porkgrid.survey.legtables import PASSED, LegTable, ends_failed, leg_table
 from porkgrid.survey.limits import REASONS
-from porkgrid.survey.measures import SUM
+from porkgrid.survey.measures import MASS, SUM
 
 if TYPE_CHECKING:
     from porkgrid.survey.plan import Plan
@@ -41,7 +41,18 @@ def flyby_cells(plan: Plan, search: Search, departure: StateTable) -> tuple[Cell
     dead = choice.dates[0] < 0
     blame = _blame_one if len(search.out) == 1 else _blame_chain
     bit = blame(plan, search, departure, first, choice, dead)
-    return cells, np.where(dead, np.uint32(1) << bit.astype(np.uint32), np.uint32(0))
+    blocked = np.where(dead, np.uint32(1) << bit.astype(np.uint32), np.uint32(0))
+    return cells, blocked | _mass_limits(plan, cells, dead)
+
+
+def _mass_limits(plan: Plan, cells: Cells, dead: np.ndarray) -> np.ndarray:
+    """Flags of the limits on masses, which are applied to the routes that were found."""
+    word = np.zeros(dead.shape, dtype=np.uint32)
+    for bit, bound in enumerate(plan.bounds, start=len(REASONS)):
+        if bound.measure.scope == MASS:
+            outside = bound.forbids(bound.measure.compute(cells)) & ~dead
+            word |= np.where(outside, np.uint32(1 << bit), np.uint32(0))
+    return word
 
 
 def gather(plan: Plan, tables: list[LegTable], departure: StateTable, choice: Choice) -> Cells:
@@ -59,7 +70,7 @@ def gather(plan: Plan, tables: list[LegTable], departure: StateTable, choice: Ch
         FlybyCells(at[k].body, legs[k - 1].v_inf_in, legs[k].v_inf_out, legs[k].body_velocity1)
         for k in range(1, len(tables))
     ]
-    return Cells(departure, plan.tables[-1], plan.earth_at_arrival, legs, plan.parking, plan.capture, flybys)
+    return plan.cells(departure, plan.tables[-1], plan.earth_at_arrival, legs, flybys)
 
 
 def _leg(
@@ -191,13 +202,13 @@ def _furthest(failed: np.ndarray, axes: tuple[int, ...]) -> np.ndarray:
 
 def _flyby_bit(plan: Plan, number: int, turned: bool) -> int:
     """The flag of a flyby that nothing gets past: its burn where turns were possible, else its altitude."""
-    total = plan.objective.scope == SUM and any(bound.measure.scope == SUM for bound in plan.bounds)
-    if turned and total:
+    limited = any(bound.measure.scope == SUM for bound in plan.bounds)
+    if turned and limited and plan.objective.name == "dv_total_km_s":
         return _bit_of(plan, "dv_total_km_s")
     return _bit_of(plan, f"flyby{number}_{'burn_km_s' if turned else 'altitude_km'}")
 
 
 def _bit_of(plan: Plan, name: str) -> int:
     """The bit of the limit on a measure; that of no transfer where the plan has no such limit."""
-    names = [bound.measure.name for bound in plan.bounds]
+    names = [bound.name for bound in plan.bounds]
     return len(REASONS) + names.index(name) if name in names else len(REASONS) - 1

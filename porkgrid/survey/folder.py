@@ -112,12 +112,13 @@ def _same_scenario(folder: Path, scenario: Scenario) -> None:
         return
     raise RequestError(
         f"{folder}: holds another survey, {held.get('name')!r} from {held.get('started')}, whose "
-        f"scenario differs in {', '.join(_differences(held.get('asked', {}), scenario))}; "
+        f"scenario differs in {', '.join(differences(held.get('asked', {}), scenario))}; "
         "give another folder with --out, or --fresh to replace it"
     )
 
 
-def _differences(held: dict[str, Any], scenario: Scenario) -> list[str]:
+def differences(held: dict[str, Any], scenario: Scenario) -> list[str]:
+    """Keys in which what a survey was asked for and what a scenario asks for are not the same."""
     wanted = asked(scenario)
     return [key for key in wanted if wanted[key] != held.get(key)] or ["its version"]
 

@@ -14,7 +14,7 @@ from porkgrid.sky.states import StateTable
 from porkgrid.survey.cells import Cells
 from porkgrid.survey.legs import LegCells, solve_leg
 from porkgrid.survey.limits import REASON_OF_STATUS, REASONS
-from porkgrid.survey.measures import ARRIVAL, DEPARTURE, ENDS, EVERY_LEG, LEG, SUM, Measure
+from porkgrid.survey.measures import ARRIVAL, DEPARTURE, ENDS, EVERY_LEG, LEG, Measure
 
 if TYPE_CHECKING:
     from porkgrid.survey.plan import Plan
@@ -83,9 +83,7 @@ def concerns(measure: Measure, number: int, legs: int) -> bool:
 
 def _alone(plan: Plan, number: int, departure: StateTable, arrival: StateTable, leg: LegCells) -> Cells:
     """Cells in which every leg is this one, so that any measure of it can be taken."""
-    return Cells(
-        departure, arrival, plan.earth_at_arrival, [leg] * len(plan.options), plan.parking, plan.capture
-    )
+    return plan.cells(departure, arrival, plan.earth_at_arrival, [leg] * len(plan.options))
 
 
 def _first_failed(plan: Plan, number: int, cells: Cells, status: np.ndarray) -> np.ndarray:
@@ -100,13 +98,13 @@ def _first_failed(plan: Plan, number: int, cells: Cells, status: np.ndarray) -> 
 
 
 def _share(plan: Plan, measure: Measure, number: int, cells: Cells, shape: tuple[int, int]) -> np.ndarray:
-    """What a leg adds to an additive measure, less being better."""
+    """What a leg adds to a measure, less being better."""
     legs = len(plan.options)
-    if measure.scope == SUM:
+    if measure.first_leg is not None and measure.last_leg is not None:
         share = np.zeros(shape)
-        for name, where in (("dv_departure_km_s", 1), ("dv_capture_km_s", legs)):
-            if name in plan.measures and number == where:
-                share = share + plan.measures[name].compute(cells)
+        for of_leg, where in ((measure.first_leg, 1), (measure.last_leg, legs)):
+            if number == where:
+                share = share + of_leg(cells)
         return share
     if not concerns(measure, number, legs):
         return np.zeros(shape)

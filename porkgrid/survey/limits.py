@@ -29,15 +29,24 @@ BITS = 32  # of the word
 
 @dataclass(frozen=True)
 class Bound:
-    """A limit on one measure; either end may be open."""
+    """A limit on one measure; either end may be open. Those that no [limits] entry gives have own names."""
 
     measure: Measure
     least: float | None
     most: float | None
+    own_name: str = ""
+    own_title: str = ""
+
+    @property
+    def name(self) -> str:
+        """The flag's name: the measure's, or its own."""
+        return self.own_name or self.measure.name
 
     @property
     def title(self) -> str:
         """The limit in words, such as "C3 at most 25 km²/s²"."""
+        if self.own_title:
+            return self.own_title
         return f"{_plain(self.measure)} {self._range().replace('-', '−')}{_unit(self.measure)}"
 
     def _range(self) -> str:
@@ -70,7 +79,7 @@ def bounds_of(limits: Mapping[str, Limit], measures: Mapping[str, Measure]) -> t
 
 def flag_names(bounds: tuple[Bound, ...]) -> list[str]:
     """Names of the bits of `blocked_by`, lowest first."""
-    return [*REASONS, *(bound.measure.name for bound in bounds)]
+    return [*REASONS, *(bound.name for bound in bounds)]
 
 
 def flag_titles(bounds: tuple[Bound, ...]) -> list[str]:

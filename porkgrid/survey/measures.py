@@ -15,7 +15,7 @@ import numpy as np
 
 from porkgrid.physics import burns
 from porkgrid.physics.constants import AU_KM
-from porkgrid.sky.bodies import gm_of, radius_of
+from porkgrid.sky.bodies import radius_of
 
 if TYPE_CHECKING:
     from porkgrid.sky.bodies import Body
@@ -24,10 +24,11 @@ if TYPE_CHECKING:
 # What a measure is a function of, which tells a search for flybys where to apply a limit or a cost to it.
 DEPARTURE, ARRIVAL, LEG = "first leg", "last leg", "leg n"
 FLYBY, EVERY_LEG, SUM, ENDS = "flyby n", "every leg", "sum over the route", "first and last date"
+MASS = "masses of the route"  # applied to the flyby dates that were found, not searched by
 
 BOTH, BY_DEPARTURE, BY_ARRIVAL = ("departure", "arrival"), ("departure",), ("arrival",)
 
-FEATURES = {
+ROUTE_FEATURES = {
     "parking": "a parking orbit: parking = { periapsis_altitude_km = …, apoapsis_altitude_km = … } "
     "in the first encounter",
     "capture": "a capture orbit: capture = { periapsis_altitude_km = …, apoapsis_altitude_km = … } "
@@ -37,6 +38,15 @@ FEATURES = {
     "arrival pole": "an arrival body with a pole in the body table",
     "mars arrival": "Mars as the arrival body",
 }
+MASS_FEATURES = {
+    "launcher": 'a launcher: [launcher] with table = "….csv"',
+    "spacecraft": "a spacecraft: [spacecraft] with isp_s = …",
+    "dry mass": "dry_mass_kg in [spacecraft]",
+    "propellant": "a [spacecraft] with a dry mass or a launcher, or a [stack]",
+    "low orbit": "a [stack], or a [spacecraft] with a dry mass and no launcher",
+    "ascent": "a stage with ascent_dv_km_s in a [stack]",
+}
+FEATURES = ROUTE_FEATURES | MASS_FEATURES
 
 
 @dataclass(frozen=True)
@@ -51,7 +61,11 @@ class Measure:
     dims: tuple[str, ...] = BOTH
     needs: tuple[str, ...] = ()
     scope: str = ENDS
-    number: int = 0  # of the leg or flyby
+    number: int = 0  # of the leg, flyby or stage
+    better: str = "least"  # or "most"
+    # Of a sum over the route: what its first leg and its last leg add beside the burns of its flybys
+    first_leg: Callable[[Cells], np.ndarray] | None = None
+    last_leg: Callable[[Cells], np.ndarray] | None = None
 
     @property
     def label(self) -> str:
@@ -59,36 +73,12 @@ class Measure:
         return self.symbol if self.unit == "1" else f"{self.symbol} ({self.unit})"
 
 
-def _departure(cells: Cells) -> np.ndarray:
-    orbit, gm = cells.parking, cells.departure.body.gm_km3_s2
-    assert orbit is not None
-    assert gm is not None
-    apsides = (orbit.periapsis_km, orbit.apoapsis_km)
-    if orbit.inclination_rad is None:
-        return burns.apsis_burn(cells.v_inf_departure, *apsides, gm)
-    return burns.departure_burn(
-        cells.v_inf_departure, cells.departure_declination_rad, *apsides, orbit.inclination_rad, gm
-    )
-
-
-def _capture(cells: Cells) -> np.ndarray:
-    orbit, gm = cells.capture, cells.arrival.body.gm_km3_s2
-    assert orbit is not None
-    assert gm is not None
-    return burns.apsis_burn(cells.v_inf_arrival, orbit.periapsis_km, orbit.apoapsis_km, gm)
-
-
 def _total(cells: Cells) -> np.ndarray:
-    total = _departure(cells)
-    for flyby in cells.flybys:
-        total = total + _flyby_burn(flyby)
-    return total if cells.capture is None else total + _capture(cells)
+    return cells.dv_departure + cells.dv_after_departure
 
 
-def _flyby_burn(flyby: FlybyCells) -> np.ndarray:
-    from porkgrid.physics.flyby import burn
-
-    return burn(flyby.v_in, flyby.v_out, gm_of(flyby.body))
+def _capture_if_any(cells: Cells) -> np.ndarray:
+    return np.zeros(()) if cells.capture is None else cells.dv_capture
 
 
 def _flyby_altitude(flyby: FlybyCells) -> np.ndarray:
@@ -187,11 +177,15 @@ _ENTRIES = [
             _right_ascension, needs=("departure pole",), scope=DEPARTURE),
     Measure("dv_departure_km_s", "km/s", r"departure $\Delta v$", "burn from the parking orbit's periapsis, "
             "with the plane change that the asymptote's declination asks of the orbit's inclination",
-            _departure, needs=("parking",), scope=DEPARTURE),
+            lambda c: c.dv_departure, needs=("parking",), scope=DEPARTURE),
     Measure("v_inf_arrival_km_s", "km/s", r"arrival $v_\infty$", "arrival excess speed",
             lambda c: c.v_inf_arrival, scope=ARRIVAL),
     Measure("dv_capture_km_s", "km/s", r"capture $\Delta v$", "burn at the capture orbit's periapsis",
-            _capture, needs=("capture",), scope=ARRIVAL),
+            lambda c: c.dv_capture, needs=("capture",), scope=ARRIVAL),
+    Measure("capture_periapsis_altitude_km", "km", "capture periapsis altitude",
+            "altitude of the capture orbit's periapsis, the cheapest where the scenario leaves it open",
+            lambda c: c.capture_periapsis_km - radius_of(c.arrival.body) + 0.0 * c.v_inf_arrival,
+            needs=("capture",), scope=ARRIVAL),
     Measure("entry_speed_km_s", "km/s", "entry speed", "inertial speed at the entry interface altitude",
             _entry_speed, needs=("entry",), scope=ARRIVAL),
     Measure("arrival_declination_deg", "deg", "arrival declination",
@@ -212,7 +206,26 @@ _ENTRIES = [
             _mars_season, BY_ARRIVAL, ("mars arrival",)),
     Measure("tof_days", "days", "flight time", "time of flight from departure to arrival", _tof),
     Measure("dv_total_km_s", "km/s", r"total $\Delta v$", "sum of all burns that the route makes",
-            _total, needs=("parking",), scope=SUM),
+            _total, needs=("parking",), scope=SUM, first_leg=lambda c: c.dv_departure,
+            last_leg=_capture_if_any),
+    Measure("dv_spacecraft_km_s", "km/s", r"spacecraft $\Delta v$",
+            "sum of the burns that the spacecraft's own engine makes: all but the departure where a launcher "
+            "injects", lambda c: c.budget.spacecraft_dv_km_s, needs=("spacecraft",), scope=MASS),
+    Measure("injected_mass_kg", "kg", "injected mass", "mass that the launcher injects to C3 and DLA",
+            lambda c: c.budget.injected_kg, needs=("launcher",), scope=DEPARTURE, better="most"),
+    Measure("delivered_mass_kg", "kg", "delivered mass", "what is left of the injected mass after the last "
+            "burn, within what a full tank can push there",
+            lambda c: c.budget.delivered_kg, needs=("launcher", "spacecraft"), scope=MASS, better="most"),
+    Measure("mass_margin_kg", "kg", "mass margin", "delivered mass above the spacecraft's dry mass",
+            lambda c: c.budget.margin_kg, needs=("launcher", "spacecraft", "dry mass"), scope=MASS,
+            better="most"),
+    Measure("propellant_kg", "kg", "propellant", "propellant of the spacecraft (for its dry mass where that "
+            "is given), or of all stages", lambda c: c.budget.propellant_kg, needs=("propellant",),
+            scope=MASS),
+    Measure("low_orbit_mass_kg", "kg", "mass in low orbit", "mass in the parking orbit before departure",
+            lambda c: c.budget.low_orbit_kg, needs=("low orbit",), scope=MASS),
+    Measure("liftoff_mass_kg", "kg", "lift-off mass", "mass of a stack that flies the ascent too",
+            lambda c: c.budget.liftoff_kg, needs=("ascent",), scope=MASS),
     Measure("sun_min_au", "au", "least Sun distance", "least distance from the Sun on the way", _nearest_sun,
             scope=EVERY_LEG),
     Measure("sun_max_au", "au", "greatest Sun distance", "greatest distance from the Sun on the way",
@@ -249,19 +262,29 @@ _FLYBY_ENTRIES = [
             lambda c, n: _flyby_altitude(c.flybys[n - 1]), scope=FLYBY),
     Measure("flyby{n}_burn_km_s", "km/s", "flyby {n} burn",
             "burn at the periapsis of flyby {n}, along the velocity",
-            lambda c, n: _flyby_burn(c.flybys[n - 1]), scope=FLYBY),
+            lambda c, n: c.flybys[n - 1].burn_km_s, scope=FLYBY),
     Measure("flyby{n}_gain_km_s", "km/s", "flyby {n} gain", "change of heliocentric speed by flyby {n}",
             lambda c, n: _flyby_gain(c.flybys[n - 1]), scope=FLYBY),
 ]  # fmt: skip
 
 
+_STAGE_ENTRIES = [
+    Measure("stage{n}_dv_km_s", "km/s", r"stage {n} $\Delta v$", "its burns and its share of the ascent",
+            lambda c, n: c.budget.stage_dv_km_s(n), scope=MASS),
+    Measure("stage{n}_propellant_kg", "kg", "stage {n} propellant", "propellant of stage {n}",
+            lambda c, n: c.budget.stage_propellant_kg(n), scope=MASS),
+]  # fmt: skip
+
+
 def all_entries() -> list[Measure]:
     """Every entry of the registry, names with `{n}` unexpanded."""
-    return [*_ENTRIES, *_LEG_ENTRIES, *_FLYBY_ENTRIES]
+    return [*_ENTRIES, *_LEG_ENTRIES, *_FLYBY_ENTRIES, *_STAGE_ENTRIES]
 
 
-def features_of(bodies: Iterable[Body], parking: bool, capture: bool) -> frozenset[str]:
-    """Features of a route (keys of `FEATURES`) that decide which measures it has."""
+def features_of(
+    bodies: Iterable[Body], parking: bool, capture: bool, masses: Set[str] = frozenset()
+) -> frozenset[str]:
+    """Features of a route (keys of `FEATURES`) that decide which measures it has; `masses`: of what flies."""
     route = list(bodies)
     first, last = route[0], route[-1]
     has = {
@@ -272,7 +295,7 @@ def features_of(bodies: Iterable[Body], parking: bool, capture: bool) -> frozens
         "arrival pole": last.pole is not None,
         "mars arrival": last.name == "mars",
     }
-    return frozenset(name for name, present in has.items() if present)
+    return frozenset(name for name, present in has.items() if present) | masses
 
 
 def measures_for(legs: int, features: Set[str]) -> dict[str, Measure]:
@@ -281,13 +304,14 @@ def measures_for(legs: int, features: Set[str]) -> dict[str, Measure]:
         *_ENTRIES,
         *(_numbered(entry, n) for n in range(1, legs + 1) for entry in _LEG_ENTRIES),
         *(_numbered(entry, n) for n in range(1, legs) for entry in _FLYBY_ENTRIES),
+        *(_numbered(entry, n) for n in range(1, _stages(features) + 1) for entry in _STAGE_ENTRIES),
     ]
     return {entry.name: entry for entry in expanded if set(entry.needs) <= features}
 
 
 def why_absent(name: str, legs: int, features: Set[str]) -> str:
     """Say why a route has no measure of this name, and what would be right."""
-    everything = measures_for(max(legs, 9), frozenset(FEATURES))
+    everything = measures_for(max(legs, 9), frozenset(FEATURES) | {f"stage {n}" for n in range(1, 10)})
     known = everything.get(name)
     if known is None:
         present = measures_for(legs, features)
@@ -297,12 +321,18 @@ def why_absent(name: str, legs: int, features: Set[str]) -> str:
     missing = [FEATURES[need] for need in known.needs if need not in features]
     if missing:
         return f"this route has no {name!r}; it needs {' and '.join(missing)}"
+    if name.startswith("stage"):
+        return f"there is no {name!r}: the stack has {_stages(features)} stages, from the lowest up"
     return f"this route has no {name!r}: it has {legs} leg{'s' if legs > 1 else ''}"
 
 
 def default_rank(features: Set[str]) -> str:
     """The measure to rank by when the scenario names none: total Δv where burns are known, else C3."""
     return "dv_total_km_s" if "parking" in features else "c3_km2_s2"
+
+
+def _stages(features: Set[str]) -> int:
+    return sum(name.startswith("stage ") for name in features)
 
 
 def _numbered(entry: Measure, n: int) -> Measure:

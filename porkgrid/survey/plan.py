@@ -2,23 +2,27 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, field
 from functools import cached_property
 from itertools import pairwise
 
 import numpy as np
 
-from porkgrid.scenario import Orbit, Parking, Scenario
-from porkgrid.sky.bodies import Body, find_body
+from porkgrid.scenario import Scenario
+from porkgrid.sky.bodies import find_body
 from porkgrid.sky.kernel import Ephemeris, open_ephemeris
 from porkgrid.sky.states import StateTable, state_table
-from porkgrid.survey.cells import ApsisOrbit
+from porkgrid.survey.cells import Cells, FlybyCells
 from porkgrid.survey.chains import Search, prepare
 from porkgrid.survey.flybylimits import refuse_unsearchable, with_flyby_bounds
-from porkgrid.survey.legs import LegOption, leg_options
+from porkgrid.survey.legs import LegCells, LegOption, leg_options
 from porkgrid.survey.limits import Bound, bounds_of
-from porkgrid.survey.measures import ENDS, Measure, default_rank, features_of, measures_for
+from porkgrid.survey.masses import Masses, masses_of
+from porkgrid.survey.masslimits import with_mass_bounds
+from porkgrid.survey.measures import Measure, default_rank, features_of, measures_for
+from porkgrid.survey.objective import objective_of
+from porkgrid.survey.orbits import ApsisOrbit, ShapeOrbit, capture_orbit, parking_orbit
 
 # A tile is a chunk of the store: 2^17 cells keep a tile's arrays at a megabyte each.
 TILE_COLUMNS = 1024
@@ -50,7 +54,8 @@ class Plan:
     earth_at_arrival: np.ndarray  # (3, m) km
     options: tuple[tuple[LegOption, ...], ...]  # per leg
     parking: ApsisOrbit | None
-    capture: ApsisOrbit | None
+    capture: ApsisOrbit | ShapeOrbit | None
+    masses: Masses
     measures: dict[str, Measure]  # all that the route has
     stored: tuple[str, ...]  # those that the survey keeps
     bounds: tuple[Bound, ...]
@@ -91,6 +96,19 @@ class Plan:
         """How many flybys the route has."""
         return len(self.options) - 1
 
+    def cells(
+        self,
+        departure: StateTable,
+        arrival: StateTable,
+        earth_at_arrival: np.ndarray,
+        legs: list[LegCells],
+        flybys: Sequence[FlybyCells] = (),
+    ) -> Cells:
+        """Cells of these legs with the orbits and masses of the plan."""
+        return Cells(
+            departure, arrival, earth_at_arrival, legs, self.parking, self.capture, list(flybys), self.masses
+        )
+
     @cached_property
     def search(self) -> Search:
         """What the search for flyby dates shares among tiles."""
@@ -115,11 +133,14 @@ def make_plan(scenario: Scenario) -> Plan:
         for body, encounter in zip(bodies, scenario.encounters, strict=True)
     )
     first, last = scenario.encounters[0], scenario.encounters[-1]
-    features = features_of(bodies, first.parking is not None, last.capture is not None)
+    masses = masses_of(scenario)
+    features = features_of(bodies, first.parking is not None, last.capture is not None, masses.features)
     measures = measures_for(len(scenario.legs), features)
     rank_by = scenario.rank.by or default_rank(features)
-    sign = 1.0 if scenario.rank.order == "least" else -1.0
-    objective, objective_sign = _objective(measures, rank_by, sign)
+    sign = 1.0 if (scenario.rank.order or measures[rank_by].better) == "least" else -1.0
+    objective, objective_sign = objective_of(masses, measures, rank_by, sign)
+    bounds = with_flyby_bounds(bounds_of(scenario.limits, measures), scenario, bodies, measures)
+    bounds = with_mass_bounds(bounds, scenario, measures)
     earth, _ = ephemeris.states(find_body("earth", {}), tables[-1].jd)
     plan = Plan(
         scenario=scenario,
@@ -127,11 +148,12 @@ def make_plan(scenario: Scenario) -> Plan:
         tables=tables,
         earth_at_arrival=earth,
         options=tuple(tuple(leg_options(leg.max_revs, leg.retrograde)) for leg in scenario.legs),
-        parking=_apsides(first.parking, bodies[0]),
-        capture=_apsides(last.capture, bodies[-1]),
+        parking=None if first.parking is None else parking_orbit(first.parking, bodies[0]),
+        capture=None if last.capture is None else capture_orbit(last.capture, bodies[-1]),
+        masses=masses,
         measures=measures,
-        stored=_stored(scenario, measures, rank_by),
-        bounds=with_flyby_bounds(bounds_of(scenario.limits, measures), scenario, bodies, measures),
+        stored=_stored(scenario, measures, rank_by, bounds),
+        bounds=bounds,
         rank_by=rank_by,
         rank_sign=sign,
         objective=objective,
@@ -142,33 +164,16 @@ def make_plan(scenario: Scenario) -> Plan:
     return plan
 
 
-def _objective(measures: dict[str, Measure], rank_by: str, sign: float) -> tuple[Measure, float]:
-    """What to search flyby dates by: the ranked measure, or total Δv where dates alone decide the rank."""
-    if measures[rank_by].scope == ENDS and "dv_total_km_s" in measures:
-        return measures["dv_total_km_s"], 1.0
-    return measures[rank_by], sign
-
-
-def _stored(scenario: Scenario, measures: dict[str, Measure], rank_by: str) -> tuple[str, ...]:
+def _stored(
+    scenario: Scenario, measures: dict[str, Measure], rank_by: str, bounds: tuple[Bound, ...]
+) -> tuple[str, ...]:
     """The measures to keep: those asked for, and always the epochs, the limited and the ranked."""
     if scenario.measures is None:
         return tuple(measures)
-    wanted = {*scenario.measures, *scenario.limits, rank_by}
+    wanted = {*scenario.measures, *(bound.measure.name for bound in bounds), rank_by}
     # what a candidate is made of
     wanted |= {name for name in measures if name.endswith(("_epoch_jd_tdb", "_revs", "_branch"))}
     return tuple(name for name in measures if name in wanted)
-
-
-def _apsides(orbit: Orbit | None, body: Body) -> ApsisOrbit | None:
-    if orbit is None:
-        return None
-    assert body.radius_km is not None  # admit.load_scenario refuses an orbit about a body without a radius
-    inclination = orbit.inclination_deg if isinstance(orbit, Parking) else None
-    return ApsisOrbit(
-        body.radius_km + orbit.periapsis_altitude_km,
-        body.radius_km + orbit.apoapsis_altitude_km,
-        None if inclination is None else float(np.radians(inclination)),
-    )
 
 
 def _blocks(shape: tuple[int, int], chunks: tuple[int, int]) -> Iterator[tuple[slice, slice]]:

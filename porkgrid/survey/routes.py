@@ -58,20 +58,13 @@ def cells_at(plan: Plan, tables: list[StateTable], options: list[LegOption]) -> 
         for table, (before, after) in zip(tables[1:-1], pairwise(legs), strict=True)
     ]
     earth, _ = plan.ephemeris.states(find_body("earth", {}), tables[-1].jd)
-    return Cells(tables[0], tables[-1], earth, legs, plan.parking, plan.capture, flybys)
+    return plan.cells(tables[0], tables[-1], earth, legs, flybys)
 
 
 def _cells_of(
     plan: Plan, departure: StateTable, arrival: StateTable, earth_at_arrival: np.ndarray, option: LegOption
 ) -> Cells:
-    return Cells(
-        departure=departure,
-        arrival=arrival,
-        earth_at_arrival=earth_at_arrival,
-        legs=[solve_leg(departure, arrival, option)],
-        parking=plan.parking,
-        capture=plan.capture,
-    )
+    return plan.cells(departure, arrival, earth_at_arrival, [solve_leg(departure, arrival, option)])
 
 
 def _better(

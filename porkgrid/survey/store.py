@@ -78,7 +78,7 @@ def _by_date(plan: Plan, version: str) -> xr.Dataset:
         "title": plan.scenario.name,
         "route": plan.route,
         "rank_by": plan.rank_by,
-        "rank_order": plan.scenario.rank.order,
+        "rank_order": "least" if plan.rank_sign > 0 else "most",
         "kernel": plan.ephemeris.label,
         "porkgrid": version,
         "caution": CAUTION,
@@ -88,14 +88,17 @@ def _by_date(plan: Plan, version: str) -> xr.Dataset:
 
 def _one_date(plan: Plan, measure: Measure) -> np.ndarray:
     """A measure that depends on one date only needs the tables, not the legs."""
-    from porkgrid.survey.cells import Cells
-
-    cells = Cells(plan.tables[0], plan.tables[-1], plan.earth_at_arrival, [], plan.parking, plan.capture)
+    cells = plan.cells(plan.tables[0], plan.tables[-1], plan.earth_at_arrival, [])
     return np.ravel(measure.compute(cells)).astype(np.float64)
 
 
 def _attributes(measure: Measure) -> dict[str, str]:
-    return {"units": measure.unit, "long_name": measure.meaning, "symbol": measure.symbol}
+    return {
+        "units": measure.unit,
+        "long_name": measure.meaning,
+        "symbol": measure.symbol,
+        "better": measure.better,
+    }
 
 
 def _flags(plan: Plan) -> dict[str, Any]:

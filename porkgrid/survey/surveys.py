@@ -12,7 +12,7 @@ import xarray as xr
 from porkgrid.errors import RequestError
 from porkgrid.scenario import Scenario
 from porkgrid.survey.admit import load_scenario
-from porkgrid.survey.folder import CANDIDATES, COMPLETE, SCENARIO, read_provenance
+from porkgrid.survey.folder import CANDIDATES, COMPLETE, SCENARIO, differences, fingerprint, read_provenance
 from porkgrid.survey.plan import Plan, make_plan
 from porkgrid.survey.store import STORE
 
@@ -36,8 +36,14 @@ class Survey:
 
     @cached_property
     def scenario(self) -> Scenario:
-        """The scenario as it was given."""
-        return load_scenario(self.path / SCENARIO, Path(self.provenance["scenario_folder"]))
+        """The scenario as it was given. RequestError where a table beside it has changed since the sweep."""
+        scenario = load_scenario(self.path / SCENARIO, Path(self.provenance["scenario_folder"]))
+        if fingerprint(scenario) != self.provenance["fingerprint"]:
+            raise RequestError(
+                f"{self.path}: the scenario or a table that it names is not what was swept: "
+                f"{', '.join(differences(self.provenance['asked'], scenario))}; sweep it anew with --fresh"
+            )
+        return scenario
 
     @cached_property
     def plan(self) -> Plan:

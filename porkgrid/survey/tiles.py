@@ -32,7 +32,9 @@ def compute_tile(plan: Plan, tile: Tile) -> tuple[dict[str, np.ndarray], TileSum
     for name in plan.stored:
         measure = plan.measures[name]
         if measure.dims == BOTH:
-            values[name] = np.broadcast_to(measure.compute(cells), blocked.shape).astype(stored_type(measure))
+            with np.errstate(over="ignore"):  # the mass of what nobody could fly is infinite in the store
+                kept = np.broadcast_to(measure.compute(cells), blocked.shape).astype(stored_type(measure))
+            values[name] = kept
     rank = np.broadcast_to(plan.measures[plan.rank_by].compute(cells), blocked.shape)
     return values, _sums(plan, tile, blocked, rank)
 

@@ -101,9 +101,11 @@ def flag_shares(survey: Survey) -> list[FlagShare]:
 
 
 def better_sign(survey: Survey, of: str) -> float:
-    """+1 where less of a measure is better, −1 where more is: as ranked, and less of anything else."""
-    most = of == survey.grid.attrs["rank_by"] and survey.grid.attrs["rank_order"] == "most"
-    return -1.0 if most else 1.0
+    """+1 where less of a measure is better, −1 where more is: as ranked, else as the measure's nature is."""
+    plan = survey.plan
+    if of == plan.rank_by:
+        return plan.rank_sign
+    return -1.0 if of in plan.measures and plan.measures[of].better == "most" else 1.0
 
 
 def _bands(rows: int, columns: int, multiple: int = 1) -> Iterator[slice]:

@@ -1,14 +1,23 @@
 """Burns of parking, capture and entry, against vector sums and energies."""
 
 import math
+import warnings
 
 import numpy as np
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 from mpmath import mp, mpf
+from scipy.optimize import minimize_scalar
 
-from porkgrid.physics.burns import apsis_burn, departure_burn, hyperbola_speed, periapsis_speed
+from porkgrid.physics.burns import (
+    apsis_burn,
+    cheapest_periapsis,
+    departure_burn,
+    hyperbola_speed,
+    periapsis_speed,
+    shape_burn,
+)
 
 GM_EARTH = 398_600.4418
 EARTH_KM = 6378.0
@@ -17,6 +26,8 @@ DECLINATION = st.floats(-0.5 * math.pi, 0.5 * math.pi)
 INCLINATION = st.floats(0.0, math.pi)
 PERIAPSIS = st.floats(6500.0, 40_000.0)
 STRETCH = st.floats(1.0, 30.0)
+ECCENTRICITY = st.floats(0.0, 0.95)
+FAST = st.floats(0.3, 15.0)  # v∞ at which an optimum stands out
 
 
 @given(V_INF, PERIAPSIS)
@@ -96,3 +107,76 @@ def test_a_small_turn_between_like_speeds_keeps_its_digits():
         slow = mp.sqrt(2 * gm * far / (near * (near + far)))
         exact = mp.sqrt(fast**2 + slow**2 - 2 * fast * slow * mp.cos(mpf(declination)))
     assert burn == pytest.approx(float(exact), rel=1e-7)  # 1e-16 of 11 km/s in a burn of 4e-6 km/s is 4e-10
+
+
+@given(V_INF, PERIAPSIS, STRETCH)
+def test_an_orbit_by_its_shape_costs_what_it_costs_by_its_apsides(v_inf, periapsis, stretch):
+    eccentricity = (stretch - 1.0) / (stretch + 1.0)
+    by_shape = float(shape_burn(v_inf, periapsis, eccentricity, GM_EARTH))
+    by_apsides = float(apsis_burn(v_inf, periapsis, periapsis * stretch, GM_EARTH))
+    assert by_shape == pytest.approx(by_apsides, abs=1e-13 * 20.0)  # rounding of speeds up to 20 km/s
+
+
+@given(FAST, ECCENTRICITY)
+def test_no_periapsis_is_cheaper_than_the_closed_form_says(v_inf, eccentricity):
+    cheapest = float(cheapest_periapsis(v_inf, eccentricity, GM_EARTH))
+
+    def burn(log_ratio):
+        return float(shape_burn(v_inf, cheapest * math.exp(log_ratio), eccentricity, GM_EARTH))
+
+    found = minimize_scalar(burn, bounds=(-4.0, 4.0), method="bounded", options={"xatol": 1e-9})
+    assert math.exp(found.x) == pytest.approx(1.0, rel=1e-5)  # a minimum is flat: half the digits of the burn
+    assert burn(0.0) <= found.fun + 1e-14 * v_inf
+
+
+@given(FAST, ECCENTRICITY)
+def test_the_burn_at_the_cheapest_periapsis_is_that_of_the_textbook(v_inf, eccentricity):
+    """Δv = v∞ √((1 − e)/2) (Curtis, section 8.8, memory)."""
+    burn = shape_burn(v_inf, cheapest_periapsis(v_inf, eccentricity, GM_EARTH), eccentricity, GM_EARTH)
+    assert float(burn) == pytest.approx(v_inf * math.sqrt(0.5 * (1.0 - eccentricity)), rel=1e-12)
+
+
+@given(FAST, ECCENTRICITY, st.floats(0.1, 10.0), st.floats(1.001, 3.0))
+def test_the_burn_rises_on_either_side_of_the_cheapest_periapsis(v_inf, eccentricity, ratio, further):
+    cheapest = float(cheapest_periapsis(v_inf, eccentricity, GM_EARTH))
+    farther = ratio * further if ratio >= 1.0 else ratio / further
+    near, far = shape_burn(v_inf, cheapest * np.array([ratio, farther]), eccentricity, GM_EARTH)
+    assert near < far
+
+
+@given(V_INF, PERIAPSIS, STRETCH, st.floats(1.001, 30.0))
+def test_to_a_given_apoapsis_the_lowest_periapsis_is_the_cheapest(v_inf, apoapsis, stretch, lower):
+    high = apoapsis / stretch
+    low = high / lower
+    assert apsis_burn(v_inf, low, apoapsis, GM_EARTH) < apsis_burn(v_inf, high, apoapsis, GM_EARTH)
+
+
+@given(V_INF, PERIAPSIS, ECCENTRICITY, st.floats(1.001, 30.0))
+def test_to_a_given_period_the_lowest_periapsis_is_the_cheapest(v_inf, axis, eccentricity, lower):
+    high = axis * (1.0 - eccentricity)
+    low = high / lower
+    burn_low, burn_high = (
+        float(apsis_burn(v_inf, each, 2.0 * axis - each, GM_EARTH)) for each in (low, high)
+    )
+    assert burn_low < burn_high
+
+
+def test_with_no_excess_speed_the_cheapest_periapsis_is_infinitely_far_and_free():
+    with warnings.catch_warnings():
+        warnings.simplefilter("error")
+        periapsis = cheapest_periapsis([0.0, 1e-200, np.nan, 3.0], 0.5, GM_EARTH)
+        burn = shape_burn([0.0, 1e-200, np.nan, 3.0], periapsis, 0.5, GM_EARTH)
+        clipped = shape_burn(0.0, np.clip(periapsis, 6578.0, 9000.0), 0.5, GM_EARTH)
+    np.testing.assert_array_equal(np.isinf(periapsis), [True, True, False, False])
+    np.testing.assert_array_equal(np.isnan(burn), [False, False, True, False])
+    assert burn[0] == 0.0
+    assert 0.0 <= burn[1] <= 1e-200  # its square is below the least double
+    assert 0.0 < clipped[0] == clipped[1]
+
+
+def test_shapes_and_speeds_broadcast():
+    v_inf, eccentricity = np.array([[2.0], [3.0]]), np.array([0.0, 0.3, 0.6])
+    periapsis = cheapest_periapsis(v_inf, eccentricity, GM_EARTH)
+    burns = shape_burn(v_inf, periapsis, eccentricity, GM_EARTH)
+    assert periapsis.shape == burns.shape == (2, 3)
+    assert periapsis[:, 0] == pytest.approx(2.0 * GM_EARTH / v_inf[:, 0] ** 2, rel=1e-15)

@@ -12,7 +12,7 @@ import pytest
 from scipy.optimize import brentq, minimize_scalar
 
 from porkgrid import lambert
-from porkgrid.physics.burns import apsis_burn
+from porkgrid.physics.burns import apsis_burn, cheapest_periapsis, shape_burn
 from porkgrid.physics.constants import GM_SUN_KM3_S2
 from porkgrid.sky.bodies import find_body
 from porkgrid.sky.epochs import jd_from_date
@@ -75,6 +75,18 @@ def test_example_8_5_arriving_at_mars_with_the_best_periapsis_for_a_7_hour_orbit
     e = brentq(lambda e: hours(e) - 7.0, 0.05, 0.9)
     assert best_periapsis(e) == pytest.approx(5447.0, abs=10.0)  # a hundredth of an hour is 8 km
     assert burn(best_periapsis(e), e) == pytest.approx(1.470, abs=0.0006)
+
+
+def test_example_8_5_by_the_closed_form_of_the_best_periapsis():
+    """v∞ 2.648 km/s, 7 h: radius 5447 km, capture 1.470 km/s. With r = a(1 − e) the closed form fixes the
+    shape by the period alone: 1 + e = 2 gm/(a v∞²).
+    """
+    axis = (GM_MARS * (7.0 * 3600.0 / (2.0 * math.pi)) ** 2) ** (1.0 / 3.0)
+    e = 2.0 * GM_MARS / (axis * 2.648**2) - 1.0
+    radius = cheapest_periapsis(2.648, e, GM_MARS)
+    assert float(radius) == pytest.approx(5447.0, abs=10.0)  # a hundredth of an hour is 8 km
+    assert float(radius) == pytest.approx(axis * (1.0 - e), rel=1e-12)
+    assert float(shape_burn(2.648, radius, e, GM_MARS)) == pytest.approx(1.470, abs=0.0006)
 
 
 def test_example_8_8_earth_1996_11_07_to_mars_1997_09_12():

@@ -85,7 +85,7 @@ def test_a_plain_file_gets_the_defaults(read):
     assert [each.step_days for each in scenario.encounters] == [1.0, 1.0]
     assert [(leg.max_revs, leg.retrograde) for leg in scenario.legs] == [(0, False)]
     rank = scenario.rank
-    assert (rank.by, rank.order, rank.keep, rank.apart_days) == (None, "least", 20, 10.0)
+    assert (rank.by, rank.order, rank.keep, rank.apart_days) == (None, None, 20, 10.0)
     assert scenario.measures is None
     assert scenario.limits == {}
 

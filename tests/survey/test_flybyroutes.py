@@ -1,17 +1,12 @@
 """Cells of routes with flybys: what is stored of the route chosen, and what is blamed where there is none."""
 
-from dataclasses import fields, replace
-from itertools import product
-
 import numpy as np
 import pytest
+from flyby_ways import every_way
 from survey_scenarios import changed, limited
 
 from porkgrid.physics.lambert import FLOWN
-from porkgrid.sky.states import StateTable
 from porkgrid.survey.candidates import Picked, measures_at
-from porkgrid.survey.cells import Cells, FlybyCells
-from porkgrid.survey.legs import LegCells, solve_leg
 from porkgrid.survey.limits import REASON_OF_STATUS, REASONS, flag_names
 from porkgrid.survey.measures import ARRIVAL, DEPARTURE, ENDS, EVERY_LEG, LEG
 from porkgrid.survey.routes import route_cells
@@ -124,34 +119,6 @@ def route(request):
     """A plan of one flyby and one of two, with their cells and what blocks them."""
     plan = request.getfixturevalue(request.param)
     return plan, *swept(plan)
-
-
-def whole(leg: LegCells, shape: tuple[int, int]) -> LegCells:
-    """The leg with every field broadcast to the whole grid."""
-    values = {field.name: getattr(leg, field.name) for field in fields(leg)}
-    return LegCells(**{name: np.broadcast_to(v, (*v.shape[:-2], *shape)) for name, v in values.items()})
-
-
-def one_date(table: StateTable, j: int) -> StateTable:
-    return replace(
-        table,
-        jd=table.jd[j : j + 1],
-        position=np.ascontiguousarray(table.position[:, j : j + 1]),
-        velocity=np.ascontiguousarray(table.velocity[:, j : j + 1]),
-    )
-
-
-def every_way(plan):
-    """Cells of every flyby date and every pair of leg options of a route with one flyby."""
-    departure, venus, arrival = plan.tables
-    for j, one, two in product(range(len(venus.jd)), *plan.options):
-        there = one_date(venus, j)
-        first = whole(solve_leg(departure, there, one), plan.shape)
-        second = whole(solve_leg(there, arrival, two), plan.shape)
-        flyby = FlybyCells(there.body, first.v_inf_in, second.v_inf_out, second.body_velocity1)
-        yield Cells(
-            departure, arrival, plan.earth_at_arrival, [first, second], plan.parking, plan.capture, [flyby]
-        )
 
 
 def in_documented_order(plan):

@@ -13,6 +13,7 @@ from porkgrid.survey.measures import (
     BY_ARRIVAL,
     BY_DEPARTURE,
     FEATURES,
+    ROUTE_FEATURES,
     all_entries,
     default_rank,
     features_of,
@@ -223,7 +224,7 @@ def test_every_leg_has_measures_of_its_own():
 
 def test_a_route_has_only_the_measures_that_its_ends_allow():
     comet = EARTH.__class__("comet", None, None, None, None, None, None)
-    assert features_of([EARTH, MARS], parking=True, capture=True) == set(FEATURES)
+    assert features_of([EARTH, MARS], parking=True, capture=True) == set(ROUTE_FEATURES)
     assert features_of([EARTH, comet], parking=False, capture=False) == {"departure pole"}
     assert features_of([MARS, EARTH], parking=False, capture=False) == {
         "departure pole", "arrival pole", "entry",
