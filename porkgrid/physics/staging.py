@@ -39,7 +39,7 @@ def stage_propellant(
     """
     fraction = np.asarray(structural_fraction, dtype=float)
     growth = _growth(dv_km_s, isp_s)
-    with np.errstate(invalid="ignore"):  # no structure and a growth beyond a double: 0·∞
+    with np.errstate(invalid="ignore", over="ignore"):  # growth beyond a double; without structure 0·∞
         left = 1.0 - fraction / (1.0 - fraction) * growth
         return np.multiply(above_kg, growth) / np.where(left > 0.0, left, np.nan)
 

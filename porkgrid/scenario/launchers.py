@@ -36,11 +36,6 @@ class Capability:
         """Injected mass at each C3 (any shape): through the rows, nowhere rising; NaN outside the table."""
         return _between(self._curve, c3_km2_s2, self.injected_mass_kg)
 
-    @property
-    def numbers(self) -> str:
-        """The table as text that is the same for the same numbers, for fingerprints."""
-        return _numbers(self.c3_km2_s2, self.injected_mass_kg)
-
     @cached_property
     def _curve(self) -> PchipInterpolator:
         return _monotone(self.c3_km2_s2, self.injected_mass_kg)
@@ -58,11 +53,6 @@ class DlaPenalty:
     def factor(self, dla_deg: ArrayLike) -> np.ndarray:
         """Factor on the injected mass at each declination, north as south; NaN beyond the table."""
         return _between(self._curve, np.abs(dla_deg), self.mass_factor)
-
-    @property
-    def numbers(self) -> str:
-        """The table as text that is the same for the same numbers, for fingerprints."""
-        return _numbers(self.dla_deg, self.mass_factor)
 
     @cached_property
     def _curve(self) -> PchipInterpolator:
@@ -133,7 +123,3 @@ def _monotone(xs: tuple[float, ...], ys: tuple[float, ...]) -> PchipInterpolator
 def _between(curve: PchipInterpolator, at: ArrayLike, falling: tuple[float, ...]) -> np.ndarray:
     values = np.asarray(curve(at))
     return np.clip(values, falling[-1], falling[0], out=values)  # rounding at the ends; NaN stays
-
-
-def _numbers(xs: tuple[float, ...], ys: tuple[float, ...]) -> str:
-    return "\n".join(f"{x!r},{y!r}" for x, y in zip(xs, ys, strict=True))

@@ -8,14 +8,14 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 from dataclasses import dataclass
-from functools import cached_property
+from functools import cached_property, reduce
 from pathlib import Path
 from typing import TYPE_CHECKING
 
 import numpy as np
 
 from porkgrid.physics.burns import apsis_burn
-from porkgrid.physics.staging import mass_ratio, stage_dv_limit, stage_propellant, stage_structure
+from porkgrid.physics.staging import mass_ratio, propellant_after, stage_dv_limit, stage_propellant, stage_structure
 from porkgrid.scenario import Launcher, Scenario, Spacecraft, Stack, Stage
 from porkgrid.scenario.launchers import Capability, DlaPenalty
 from porkgrid.sky.bodies import Body, gm_of
@@ -118,7 +118,7 @@ class Budget:
     @cached_property
     def _spent_per_kg(self) -> np.ndarray:
         """Propellant burnt for each kilogram left after the last burn."""
-        return mass_ratio(self.spacecraft_dv_km_s, self._spacecraft.isp_s) - 1.0
+        return propellant_after(1.0, self.spacecraft_dv_km_s, self._spacecraft.isp_s)
 
     @cached_property
     def delivered_kg(self) -> np.ndarray:
@@ -143,7 +143,7 @@ class Budget:
         Without a dry mass it is what the delivered mass has cost.
         """
         if self.masses.stack is not None:
-            return np.add.reduce([self.stage_propellant_kg(n) for n in range(1, self._stages + 1)])
+            return reduce(np.add, [propellant for _, _, propellant in self._stack])
         dry = self._spacecraft.dry_mass_kg
         return (self.delivered_kg if dry is None else dry) * self._spent_per_kg
 
@@ -154,17 +154,13 @@ class Budget:
             assert self._spacecraft.dry_mass_kg is not None
             return self._spacecraft.dry_mass_kg * (1.0 + self._spent_per_kg)
         number = next(n for n, stage in enumerate(self.masses.stack.stages, start=1) if stage.flies)
-        _, above, propellant = self._stack[number - 1]
         stage = self.masses.stack.stages[number - 1]
-        empty = above + stage_structure(propellant, stage.structural_fraction)
-        return empty * mass_ratio(self._in_space_dv(stage), stage.isp_s)
+        return self._gross_kg(number) / mass_ratio(stage.ascent_dv_km_s, stage.isp_s)
 
     @property
     def liftoff_kg(self) -> np.ndarray:
         """Mass on the ground of a stack that flies the ascent."""
-        assert self.masses.stack is not None
-        stage, (_, above, propellant) = self.masses.stack.stages[0], self._stack[0]
-        return above + propellant + stage_structure(propellant, stage.structural_fraction)
+        return self._gross_kg(1)
 
     def stage_dv_km_s(self, number: int) -> np.ndarray:
         """What stage `number` (from 1, the lowest) must give: its burns and its share of the ascent."""
@@ -179,10 +175,12 @@ class Budget:
         assert self.masses.spacecraft is not None
         return self.masses.spacecraft
 
-    @property
-    def _stages(self) -> int:
+    def _gross_kg(self, number: int) -> np.ndarray:
+        """Mass of stage `number` full, with all that it carries."""
         assert self.masses.stack is not None
-        return len(self.masses.stack.stages)
+        _, above, propellant = self._stack[number - 1]
+        structure = stage_structure(propellant, self.masses.stack.stages[number - 1].structural_fraction)
+        return above + propellant + structure
 
     @cached_property
     def _stack(self) -> list[tuple[np.ndarray, np.ndarray, np.ndarray]]:
@@ -198,7 +196,8 @@ class Budget:
         return sized[::-1]
 
     def _in_space_dv(self, stage: Stage) -> np.ndarray:
-        return np.add.reduce([self.cells.burn_named(name) for name in stage.flies] or [np.zeros(())])
+        burns = [self.cells.burn_named(name) for name in stage.flies]
+        return reduce(np.add, burns, np.zeros(())) if len(burns) != 1 else burns[0]
 
 
 def _capability(launcher: Launcher) -> Capability:

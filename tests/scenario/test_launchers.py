@@ -117,7 +117,8 @@ def test_comments_blank_lines_spaces_quotes_and_line_ends_do_not_change_a_table(
     assert faults == []
     assert decorated == plain
     assert hash(decorated) == hash(plain)
-    assert decorated.numbers == plain.numbers == "0.0,2400.0\n10.5,0.0"
+    assert decorated == plain
+    assert (plain.c3_km2_s2, plain.injected_mass_kg) == ((0.0, 10.5), (2400.0, 0.0))
 
 
 def test_tables_are_equal_by_their_numbers_not_by_their_place(tmp_path):
@@ -126,7 +127,7 @@ def test_tables_are_equal_by_their_numbers_not_by_their_place(tmp_path):
     auk, gull, tern = (read_capability(tmp_path / f"{name}.csv")[0] for name in ("auk", "gull", "tern"))
     assert (auk.name, gull.name) == ("auk", "gull")
     assert auk == gull
-    assert len({auk, gull, tern}) == len({auk.numbers, gull.numbers, tern.numbers}) == 2
+    assert len({auk, gull, tern}) == 2
 
 
 def test_all_faults_of_a_table_are_told_in_the_order_of_its_lines(table):
@@ -245,7 +246,6 @@ def test_penalties_are_equal_by_their_numbers(table):
     assert isinstance(first, DlaPenalty)
     assert first == again
     assert first != other
-    assert (first.numbers == again.numbers, first.numbers == other.numbers) == (True, False)
 
 
 @pytest.mark.parametrize("name", ["kittiwake-medium", "kittiwake-heavy"])

@@ -110,7 +110,7 @@ def test_without_a_dry_mass_the_propellant_is_what_the_delivered_mass_has_cost(f
 
 
 def test_a_stack_is_sized_from_the_payload_down(flown):
-    """Every stage obeys the rocket equation with its own structure, and low orbit is where the ascent ends."""
+    """Every stage obeys the rocket equation with its own structure; low orbit is where the ascent ends."""
     at, _, _ = flown(ROOK + STACK)
     upper, lower = at("stage2_propellant_kg"), at("stage1_propellant_kg")
     assert at("stage2_dv_km_s") == pytest.approx(at("dv_capture_km_s"))
