@@ -7,8 +7,11 @@ import sys
 import typer
 
 from porkgrid.commands.chart import chart
+from porkgrid.commands.compare import compare
 from porkgrid.commands.listings import bodies, measures
+from porkgrid.commands.period import period
 from porkgrid.commands.rank import rank
+from porkgrid.commands.slip import slip
 from porkgrid.commands.sweep import check, sweep
 from porkgrid.errors import RequestError, RunError
 
@@ -21,7 +24,7 @@ app = typer.Typer(
     rich_markup_mode=None,
 )
 
-for _command in (sweep, chart, rank, check, bodies, measures):
+for _command in (sweep, chart, rank, period, slip, compare, check, bodies, measures):
     app.command()(_command)
 
 _INTERRUPTED = 130  # exit code

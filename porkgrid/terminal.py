@@ -6,8 +6,10 @@ import json
 import math
 import os
 import sys
+import time
 from collections.abc import Callable, Iterable, Iterator, Sequence
 from contextlib import contextmanager
+from dataclasses import asdict
 from typing import TYPE_CHECKING, Any
 
 from rich import box
@@ -17,7 +19,7 @@ from rich.table import Table
 if TYPE_CHECKING:
     import pandas as pd
 
-    from porkgrid.survey.sweep import Progress
+    from porkgrid.survey.progress import Progress
 
 _DIGITS = {"km/s": 3, "km²/s²": 2, "deg": 1, "days": 1, "au": 3, "1": 0, "kg": 0, "km": 0}
 _PLAIN_WIDTH = 1000  # columns of a table that does not go to a terminal
@@ -96,25 +98,58 @@ def candidate_rows(table: pd.DataFrame, units: dict[str, str], names: Sequence[s
 
 
 @contextmanager
-def sweep_progress(quiet: bool) -> Iterator[Callable[[Progress], None] | None]:
-    """A bar with share, rate, time left and best value; nothing without a terminal or under NO_COLOR."""
-    if quiet or not sys.stderr.isatty() or os.environ.get("NO_COLOR"):
-        yield None
-        return
-    from rich.progress import BarColumn, Progress, TaskProgressColumn, TextColumn, TimeRemainingColumn
+def sweep_progress(as_json: bool) -> Iterator[Callable[[Progress], None] | None]:
+    """Tell the progress of a sweep on standard error while the context lasts.
 
-    columns = (BarColumn(), TaskProgressColumn(), TextColumn("{task.description}"), TimeRemainingColumn())
-    with Progress(*columns, console=Console(stderr=True), transient=True) as bar:
+    With `as_json` a JSON document a line, once a second; else a bar with share, rate, time left and the best
+    value, and nothing without a terminal or under NO_COLOR.
+    """
+    if as_json:
+        yield _progress_lines()
+    elif not sys.stderr.isatty() or os.environ.get("NO_COLOR"):
+        yield None
+    else:
+        with _progress_bar() as report:
+            yield report
+
+
+def _progress_lines() -> Callable[[Progress], None]:
+    last = -math.inf
+
+    def report(progress: Progress) -> None:
+        nonlocal last
+        done = progress.cells_done == progress.cells
+        if time.monotonic() - last > 1.0 or done:
+            last = time.monotonic()
+            facts = asdict(progress) | {"share": progress.cells_done / progress.cells}
+            print(json.dumps(facts), file=sys.stderr, flush=True)
+
+    return report
+
+
+@contextmanager
+def _progress_bar() -> Iterator[Callable[[Progress], None]]:
+    from rich.progress import BarColumn, TaskProgressColumn, TextColumn
+    from rich.progress import Progress as Bar
+
+    columns = (BarColumn(), TaskProgressColumn(), TextColumn("{task.description}"))
+    with Bar(*columns, console=Console(stderr=True), transient=True) as bar:
         task = bar.add_task("sweeping")
 
-        def report(progress: Any) -> None:
-            speed = bar.tasks[task].finished_speed or bar.tasks[task].speed or math.nan
-            rate = "" if speed != speed else f"{speed / 1e6:.1f} million cells/s"
-            best = "" if progress.best is None else f"best {progress.best:.4g}"
-            text = "  ".join(part for part in (rate, best) if part) or "sweeping"
+        def report(progress: Progress) -> None:
+            parts = [f"{progress.cells_per_second / 1e6:.1f} million cells/s"]
+            parts += [f"{_clock(progress.seconds_left)} left"]
+            parts += [] if progress.best is None else [f"best {progress.best:.4g}"]
+            text = "  ".join(parts)
             bar.update(task, completed=progress.cells_done, total=progress.cells, description=text)
 
         yield report
+
+
+def _clock(seconds: float) -> str:
+    minutes, rest = divmod(round(seconds), 60)
+    hours, minutes = divmod(minutes, 60)
+    return f"{hours}:{minutes:02d}:{rest:02d}" if hours else f"{minutes}:{rest:02d}"
 
 
 def _is_number(text: str) -> bool:

@@ -10,8 +10,21 @@ import typer
 from pydantic import BaseModel
 
 from porkgrid import cli, load_scenario
-from porkgrid.scenario import BodySpec, Encounter, Flyby, Leg, Limit, Orbit, Parking, Rank, read_scenario
+from porkgrid.scenario import (
+    BodySpec,
+    Encounter,
+    Flyby,
+    Leg,
+    Limit,
+    Orbit,
+    Parking,
+    Rank,
+    Spacecraft,
+    Stage,
+    read_scenario,
+)
 from porkgrid.scenario.sections import SECTIONS
+from porkgrid.scenario.vehicles import LauncherFiles
 from porkgrid.survey.measures import all_entries
 from porkgrid.survey.plan import make_plan
 
@@ -22,7 +35,8 @@ CI_RUN = (ROOT / ".ci" / "run").read_text()
 
 BLOCKS = re.findall(r"^```(\w+)\n(.*?)^```$", README, re.MULTILINE | re.DOTALL)
 MAIN_JOB, TESTS = (text for _, text in BLOCKS[:2])
-WHOLE_SCENARIO, FLYBY_SCENARIO, OWN_BODIES = (text for kind, text in BLOCKS if kind == "toml")
+TOML = [text for kind, text in BLOCKS if kind == "toml"]
+WHOLE_SCENARIO, FLYBY_SCENARIO, OWN_BODIES, LAUNCHED, STACK = TOML
 SAMPLE, FOLDER = (text for kind, text in BLOCKS if kind == "text")
 (PYTHON,) = (text for kind, text in BLOCKS if kind == "python")
 
@@ -111,15 +125,24 @@ def test_the_bodies_example_validates_in_that_scenario(here):
     assert set(draft.bodies) == set(tomllib.loads(OWN_BODIES)["bodies"])
 
 
+@pytest.mark.parametrize("vehicle", [LAUNCHED, STACK], ids=["launcher", "stack"])
+def test_the_vehicle_examples_fly_in_that_scenario(here, vehicle):
+    (here / "launchers").symlink_to(ROOT / "scenarios" / "launchers", target_is_directory=True)
+    path = here / "scenario.toml"
+    path.write_text(WHOLE_SCENARIO + "\n" + vehicle)
+    assert "propellant_kg" in make_plan(load_scenario(path)).measures
+
+
 def test_the_examples_show_every_key():
     def keys(value: object) -> set[str]:
         if isinstance(value, dict):
             return set(value).union(*map(keys, value.values()))
         return set().union(*map(keys, value)) if isinstance(value, list) else set()
 
-    examples = (WHOLE_SCENARIO, FLYBY_SCENARIO, OWN_BODIES)
+    examples = (WHOLE_SCENARIO, FLYBY_SCENARIO, OWN_BODIES, LAUNCHED, STACK)
     shown = set().union(*(keys(tomllib.loads(text)) for text in examples))
-    models: list[type[BaseModel]] = [Encounter, Orbit, Parking, Flyby, Leg, Limit, Rank, BodySpec]
+    models: list[type[BaseModel]]
+    models = [Encounter, Orbit, Parking, Flyby, Leg, Limit, Rank, BodySpec, LauncherFiles, Spacecraft, Stage]
     known = set(SECTIONS).union(*(model.model_fields for model in models))
     assert known <= shown
 
@@ -128,7 +151,9 @@ def test_every_measure_is_in_the_readme_and_every_measure_in_it_exists():
     listed = README.partition("## Measures")[2].partition("## How to read")[0]
     named = set(re.findall(r"^- .*?(?=^- |\Z|^$)", listed, re.MULTILINE | re.DOTALL))
     names = set(re.findall(r"`(\w+)`", " ".join(named)))
-    assert {re.sub(r"^(leg|flyby)1", r"\1{n}", name) for name in names} == {e.name for e in all_entries()}
+    assert {re.sub(r"^(leg|flyby|stage)1", r"\1{n}", name) for name in names} == {
+        e.name for e in all_entries()
+    }
 
 
 @pytest.mark.parametrize("text", [README, DEVELOPERS], ids=["README", "DEVELOPERS"])

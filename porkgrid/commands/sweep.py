@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import signal
 import threading
 from importlib import import_module
 from pathlib import Path
@@ -9,12 +10,18 @@ from typing import TYPE_CHECKING, Annotated, Any
 
 import typer
 
-from porkgrid.commands.arguments import AsJson, Format, Formats, ScenarioFile
+from porkgrid.commands.arguments import AsJson, Format, Formats, ScenarioFile, bytes_of
+from porkgrid.commands.compare import compare_surveys
 from porkgrid.commands.rank import print_candidates
 from porkgrid.errors import RequestError
 
 if TYPE_CHECKING:
+    from porkgrid.scenario import Scenario
+    from porkgrid.survey.cost import Cost
+    from porkgrid.survey.plan import Plan
     from porkgrid.survey.surveys import Survey
+
+_CAMPAIGN_DAYS = 21  # of the launch periods that a campaign is compared by
 
 
 def sweep(
@@ -22,29 +29,62 @@ def sweep(
     out: Annotated[Path | None, typer.Option(help="Survey folder; by default surveys/NAME.")] = None,
     workers: Annotated[int | None, typer.Option(min=1, help="Threads; by default one per core.")] = None,
     fresh: Annotated[bool, typer.Option("--fresh", help="Replace a survey that is there already.")] = False,
+    memory: Annotated[
+        str | None, typer.Option(metavar="SIZE", help="Most memory to take, such as 900MB or 2GB.")
+    ] = None,
+    cluster: Annotated[
+        str | None,
+        typer.Option(metavar="ADDRESS", help="Dask scheduler to give the tiles to, or local to start one."),
+    ] = None,
     formats: Formats = [Format.PNG],  # noqa: B006 - typer wants a list
     as_json: AsJson = False,
 ) -> None:
     """Sweep a scenario: solve every pair of dates, rank them and draw the charts.
 
-    An interrupted sweep goes on where it stopped when the same command is given again.
+    An interrupted or killed sweep goes on where it stopped when the same command is given again. The survey
+    folder keeps a log, sweep.log. With --json progress goes to standard error, a JSON document a line.
 
     Example: porkgrid sweep scenarios/earth-mars-2028.toml
     """
-    from porkgrid.survey.admit import load_scenario
+    from porkgrid.survey.admit import load_routes
 
-    request = load_scenario(scenario)
+    budget = None if memory is None else bytes_of(memory)
+    requests = load_routes(scenario)
     from porkgrid import terminal
     from porkgrid.survey import sweep as engine
+    from porkgrid.survey.folder import folder_of, refuse_foreign
     from porkgrid.survey.plan import make_plan
 
     # the figures' libraries load while kernels run, which leave Python alone
     threading.Thread(target=import_module, args=("porkgrid.figures.draw",)).start()
-    _compile(lambda: engine.warm_up(make_plan(request)))
-    with terminal.sweep_progress(quiet=as_json) as report:
-        survey = engine.sweep(request, out, workers, fresh=fresh, report=report)
-    drawn = _draw(survey, None, None, formats)
-    _tell(survey, drawn, as_json)
+    signal.signal(signal.SIGTERM, signal.default_int_handler)  # as Ctrl-C: the tiles in hand are saved
+    folders = [folder_of(requests[0], out)] if len(requests) == 1 else _folders(scenario, requests, out)
+    for folder in folders:
+        refuse_foreign(folder)  # before the kernels are compiled for nothing
+    _compile(lambda: engine.warm_up(make_plan(requests[0])))
+    flown: dict[Any, Any] = {}  # legs that the routes of a campaign share
+    surveys = []
+    for request, folder in zip(requests, folders, strict=True):
+        if len(requests) > 1:
+            terminal.say(request.name)
+        with terminal.sweep_progress(as_json) as report:
+            survey = engine.sweep(
+                request, folder, workers, fresh=fresh, memory_bytes=budget, cluster=cluster, flown=flown,
+                report=report,
+            )  # fmt: skip
+        _tell(survey, _draw(survey, None, None, formats), as_json)
+        surveys.append(survey)
+    if len(surveys) > 1:
+        compare_surveys(surveys, folders[0].parent, _CAMPAIGN_DAYS, None, formats, as_json)
+
+
+def _folders(scenario: Path, requests: list[Scenario], out: Path | None) -> list[Path]:
+    """A survey folder for each route of a campaign, side by side in the campaign's."""
+    from porkgrid.scenario import slug_of
+
+    campaign, _, _ = requests[0].name.rpartition(": ")
+    place = out or Path("surveys") / slug_of(campaign or scenario.stem)
+    return [place / slug_of(request.name.rpartition(": ")[2]) for request in requests]
 
 
 def check(scenario: ScenarioFile, as_json: AsJson = False) -> None:
@@ -52,9 +92,9 @@ def check(scenario: ScenarioFile, as_json: AsJson = False) -> None:
 
     Example: porkgrid check scenarios/earth-mars-2028.toml
     """
-    from porkgrid.survey.admit import load_scenario
+    from porkgrid.survey.admit import load_routes
 
-    request = load_scenario(scenario)
+    requests = load_routes(scenario)
     from dataclasses import asdict
 
     from porkgrid import terminal
@@ -62,17 +102,26 @@ def check(scenario: ScenarioFile, as_json: AsJson = False) -> None:
     from porkgrid.survey.plan import make_plan
     from porkgrid.survey.sweep import warm_up
 
-    plan = make_plan(request)
-    _compile(lambda: warm_up(plan))
-    cost = predict(plan)
+    plans = [make_plan(request) for request in requests]
+    _compile(lambda: warm_up(plans[0]))
+    costs = [predict(plan) for plan in plans]
     if as_json:
-        terminal.print_json(
-            {"scenario": str(scenario), "name": request.name, "route": plan.route} | asdict(cost)
-        )
+        told = [
+            {"scenario": str(scenario), "name": plan.scenario.name, "route": plan.route} | asdict(cost)
+            for plan, cost in zip(plans, costs, strict=True)
+        ]
+        terminal.print_json(told[0] if len(told) == 1 else told)
         return
+    for plan, cost in zip(plans, costs, strict=True):
+        _print_cost(plan, cost)
+
+
+def _print_cost(plan: Plan, cost: Cost) -> None:
+    from porkgrid import terminal
+
     n, m = plan.shape
     rows = [
-        ("scenario", f"{request.name}: {plan.route}"),
+        ("scenario", f"{plan.scenario.name}: {plan.route}"),
         ("grid", f"{n:,} departure × {m:,} arrival dates = {cost.cells:,} cells in {cost.tiles:,} tiles"),
         ("Lambert solves", f"{cost.lambert_solves:,}"),
         ("measures kept", str(len(plan.stored))),

@@ -13,7 +13,7 @@ from porkgrid.figures.text import line_height_in, one_line, pack, put, shorten, 
 
 LEFT_IN, RIGHT_IN = 0.30, SLIDE_WIDTH_IN - 0.25
 NOTE_PT = SMALL_PT + 0.5
-_TITLE_SIZES_PT = (18.0, 15.0, 13.0)
+TITLE_SIZES_PT = (18.0, 15.0, 13.0)
 _TITLE_Y, _HEADLINE_Y, _LIMITS_Y = 7.10, 6.84, 6.64
 _FOOTER_Y = 0.14
 
@@ -29,7 +29,7 @@ def draw_titles(sheet: Axes, title: str, headline: Sequence[str], notes: Sequenc
     """Write a title, a line of what the figure shows, and at most two small lines under it."""
     room = RIGHT_IN - LEFT_IN
     name = one_line(title) or "Survey without a name"
-    size = next((s for s in _TITLE_SIZES_PT if width_in(name, s, "bold") <= room), _TITLE_SIZES_PT[-1])
+    size = next((s for s in TITLE_SIZES_PT if width_in(name, s, "bold") <= room), TITLE_SIZES_PT[-1])
     put(sheet, LEFT_IN, _TITLE_Y, shorten(name, room, size, "bold"), size, weight="bold")
 
     text = " · ".join(one_line(part) for part in headline if one_line(part))

@@ -115,16 +115,30 @@ def draw_candidates(
     inside = np.flatnonzero((x >= box.left) & (x <= box.right) & (y >= box.bottom) & (y <= box.top))
     points = [(float(x[i]), float(y[i])) for i in inside]
     aside = [_on_an_island(panel, days, allowed, point) for point in points]
+    mark_by_number(sheet, points, aside, [int(i) + 1 for i in inside], room)
+
+
+def mark_by_number(
+    sheet: Axes,
+    points: Sequence[tuple[float, float]],
+    aside: Sequence[bool],
+    numbers: Sequence[int],
+    room: Room,
+) -> None:
+    """Mark points of the slide by number, number 1 in colour; those to stand aside get a dot and a leader.
+
+    Where there is no room for a number, the dot alone is left.
+    """
     places = place_markers(points, aside, _MARKER_IN + 0.02, room)
-    placed = [(int(i), at, place) for i, at, place in zip(inside, points, places, strict=True) if place]
+    placed = [(number, at, place) for number, at, place in zip(numbers, points, places, strict=True) if place]
     moved = [at for at, place in zip(points, places, strict=True) if place != at]
     if moved:
         leaders = [[at, place] for _, at, place in placed if place != at]
         add_segments(sheet, leaders, colors=INK, linewidths=0.7)
         dot: Any = {"linestyle": "", "marker": "o", "markersize": 3.8, "markeredgewidth": 0.6}
         add_line(sheet, *zip(*moved, strict=True), color=INK, markeredgecolor="white", **dot)
-    for i, _, place in placed:
-        _number(sheet, place, i + 1)
+    for number, _, place in placed:
+        _number(sheet, place, number)
 
 
 def _on_an_island(

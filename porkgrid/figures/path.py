@@ -68,6 +68,12 @@ def draw_path(picture: RoutePicture) -> Figure:
     return figure
 
 
+def draw_pole_view(figure: Figure, sheet: Axes, picture: RoutePicture, box: Box) -> None:
+    """Draw the view from the north pole of the ecliptic alone into a box of a slide."""
+    scene = _scene_of(picture)
+    _draw_from_the_pole(figure, sheet, scene, fitted(box, *_frame(scene), _MARGIN))
+
+
 @dataclass(frozen=True, eq=False)
 class _Scene:
     """What both views show, in au: lines (3, k), points (3,), with the words beside them."""

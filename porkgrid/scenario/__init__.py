@@ -37,10 +37,20 @@ __all__ = [
     "Stack",
     "Stage",
     "body_of",
+    "draft_of",
     "read_scenario",
+    "slug_of",
 ]
 
 SLUG_LENGTH = 60  # characters, at most 240 bytes: file systems allow 255
+
+
+def slug_of(name: str) -> str:
+    """A name as a folder has it: lower case, accents dropped, hyphens between words."""
+    plain = unicodedata.normalize("NFKD", name.lower())
+    unaccented = "".join(each for each in plain if not unicodedata.combining(each))
+    words = "".join(each if each.isalnum() else " " for each in unaccented).split()
+    return "-".join(words)[:SLUG_LENGTH].strip("-")
 
 
 class Scenario(BaseModel):
@@ -66,10 +76,7 @@ class Scenario(BaseModel):
     @property
     def slug(self) -> str:
         """The name as a folder has it: lower case, accents dropped, hyphens between words."""
-        plain = unicodedata.normalize("NFKD", self.name.lower())
-        unaccented = "".join(each for each in plain if not unicodedata.combining(each))
-        words = "".join(each if each.isalnum() else " " for each in unaccented).split()
-        return "-".join(words)[:SLUG_LENGTH].strip("-")
+        return slug_of(self.name)
 
     @property
     def own_bodies(self) -> dict[str, Body]:
@@ -103,10 +110,15 @@ def read_scenario(path: str | Path, beside: Path | None = None) -> Draft:
     text, faults = read_text(path)
     if faults:
         return Draft(path, tuple(faults))
+    return draft_of(text, path, path.parent if beside is None else beside)
+
+
+def draft_of(text: str, path: Path, beside: Path) -> Draft:
+    """The draft of a scenario's text, which is or might be in the file `path`."""
     table, faults = parse_toml(text)
     if faults:
         return Draft(path, tuple(faults))
-    return _draft(path, text, table, path.parent if beside is None else beside)
+    return _draft(path, text, table, beside)
 
 
 def _draft(path: Path, text: str, table: dict[str, Any], beside: Path) -> Draft:

@@ -75,7 +75,12 @@ class Outline:
 def unknown_keys(table: Mapping[str, Any]) -> list[Fault]:
     """Faults for keys at the top of the file that mean nothing."""
     unknown = [key for key in table if key not in SECTIONS]
-    return [Fault(printable(key), f"no such key; {nearest(key, SECTIONS)}") for key in unknown]
+    return [
+        Fault(key, "makes a campaign of several routes; only `porkgrid sweep` and `check` take one")
+        if key == "route"
+        else Fault(printable(key), f"no such key; {nearest(key, SECTIONS)}")
+        for key in unknown
+    ]
 
 
 def read_heading(table: Mapping[str, Any]) -> tuple[Heading | None, list[Fault]]:

@@ -7,9 +7,13 @@ from datetime import date
 from itertools import pairwise
 from pathlib import Path
 
+import tomli_w
+
 from porkgrid.errors import RequestError
-from porkgrid.scenario import Draft, Outline, Scenario, body_of, read_scenario
+from porkgrid.scenario import Draft, Outline, Scenario, body_of, draft_of, read_scenario
+from porkgrid.scenario.campaign import is_campaign, routes_of
 from porkgrid.scenario.faults import Fault, printable
+from porkgrid.scenario.text import parse_toml, read_text
 from porkgrid.sky.bodies import BODIES, Body, find_body
 from porkgrid.sky.epochs import iso_from_jd, jd_from_date
 from porkgrid.sky.kernel import Ephemeris, open_ephemeris
@@ -31,6 +35,51 @@ def load_scenario(path: str | Path, beside: Path | None = None) -> Scenario:
     if draft.scenario is None or faults:
         raise RequestError(*(fault.line(draft.path) for fault in faults))
     return draft.scenario
+
+
+def load_routes(path: str | Path) -> list[Scenario]:
+    """The scenarios of a file: one, or one for each [[route]] of a campaign.
+
+    Limits and stored measures that a route cannot have are left out of it where another route has them.
+    Raises RequestError with every fault of the file, those of a route with its name.
+    """
+    path = Path(path)
+    text, unread = read_text(path)
+    table, faults = parse_toml(text) if not unread else ({}, unread)
+    if faults or not is_campaign(table):
+        return [load_scenario(path)]
+    routes, faults = routes_of(table)
+    drafts = [_without_the_absent(route.text, path) for route in routes]
+    absent = set.intersection(*(gone for _, gone in drafts)) if drafts else set()
+    faults += [Fault(key, "no route of the campaign has this measure") for key in sorted(absent)]
+    lines = [fault.line(path) for fault in faults]
+    scenarios = []
+    for route, (draft, _) in zip(routes, drafts, strict=True):
+        wrong = [*draft.faults, *_engine_faults(draft)]
+        lines += [Fault(f"route {route.name}, {key}", what).line(path) for key, what in wrong]
+        if draft.scenario is not None and not wrong:
+            scenarios.append(draft.scenario)
+    if lines:
+        raise RequestError(*dict.fromkeys(lines))
+    return scenarios
+
+
+def _without_the_absent(text: str, path: Path) -> tuple[Draft, set[str]]:
+    """A route's draft without the limits and stored measures that it cannot have, and what those were."""
+    draft = draft_of(text, path, path.parent)
+    gone = {
+        fault.key if fault.key != "measures" else f"measures, {fault.text.split(chr(39))[1]}"
+        for fault in _engine_faults(draft)
+        if fault.key.startswith("limits.") or fault.key == "measures"
+    }
+    if not gone:
+        return draft, gone
+    table, _ = parse_toml(text)
+    names = {key.rpartition(".")[2].rpartition(", ")[2] for key in gone}
+    table["limits"] = {name: each for name, each in table.get("limits", {}).items() if name not in names}
+    if "measures" in table:
+        table["measures"] = [name for name in table["measures"] if name not in names]
+    return draft_of(tomli_w.dumps(table), path, path.parent), gone
 
 
 def _engine_faults(draft: Draft) -> Iterator[Fault]:

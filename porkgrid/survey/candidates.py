@@ -15,9 +15,11 @@ from porkgrid.sky.states import state_table
 from porkgrid.survey.legs import LegOption
 from porkgrid.survey.plan import Plan
 from porkgrid.survey.rank import distinct, local_bests
+from porkgrid.survey.reading import open_grid
 from porkgrid.survey.routes import cells_at
-from porkgrid.survey.store import BLOCKED_BY, STORE
+from porkgrid.survey.store import BLOCKED_BY
 from porkgrid.survey.surveys import Survey
+from porkgrid.survey.view import better_sign
 
 
 @dataclass(frozen=True)
@@ -30,7 +32,7 @@ class Picked:
 
 def pick(folder: Path, plan: Plan, by: str, sign: float, keep: int, apart_days: float) -> list[Picked]:
     """The distinct local bests of a stored measure, best first."""
-    grid = xr.open_zarr(folder / STORE, chunks=None)
+    grid = open_grid(folder)
 
     def read(rows: slice) -> tuple[np.ndarray, np.ndarray]:
         band = grid[[by, BLOCKED_BY]].isel(departure=rows)
@@ -38,13 +40,14 @@ def pick(folder: Path, plan: Plan, by: str, sign: float, keep: int, apart_days: 
         return values.values, band[BLOCKED_BY].values
 
     i, j, _ = local_bests(read, len(plan.tables[0].jd), sign)
-    at = {"departure": xr.DataArray(i, dims="cell"), "arrival": xr.DataArray(j, dims="cell")}
-    cells = grid[[name for name in plan.stored if _makes_a_candidate(name)]].isel(at).load()
-    epochs = np.column_stack([cells[name].values for name in epoch_names(plan)])
-    return [
-        Picked(tuple(map(float, epochs[row])), _options(plan, cells, row))
-        for row in distinct(epochs, apart_days, keep)
-    ]
+    cells, epochs = _cells_of_candidates(grid, plan, i, j)
+    return [_picked(plan, cells, epochs, row) for row in distinct(epochs, apart_days, keep)]
+
+
+def picked_at(folder: Path, plan: Plan, i: np.ndarray, j: np.ndarray) -> list[Picked]:
+    """The routes in cells (i, j) of a survey's grid, index arrays (k,), all of them cells that are flown."""
+    cells, epochs = _cells_of_candidates(open_grid(folder), plan, i, j)
+    return [_picked(plan, cells, epochs, row) for row in range(len(epochs))]
 
 
 def epoch_names(plan: Plan) -> list[str]:
@@ -73,6 +76,19 @@ def measures_at(plan: Plan, one: Picked) -> dict[str, float]:
     return {name: float(np.ravel(measure.compute(cells))[0]) for name, measure in plan.measures.items()}
 
 
+def _cells_of_candidates(
+    grid: xr.Dataset, plan: Plan, i: np.ndarray, j: np.ndarray
+) -> tuple[xr.Dataset, np.ndarray]:
+    """What the store holds of the cells that a candidate is made of, and their epochs (n, encounters)."""
+    at = {"departure": xr.DataArray(i, dims="cell"), "arrival": xr.DataArray(j, dims="cell")}
+    cells = grid[[name for name in plan.stored if _makes_a_candidate(name)]].isel(at).load()
+    return cells, np.column_stack([cells[name].values for name in epoch_names(plan)])
+
+
+def _picked(plan: Plan, cells: xr.Dataset, epochs: np.ndarray, row: int) -> Picked:
+    return Picked(tuple(map(float, epochs[row])), _options(plan, cells, row))
+
+
 def _makes_a_candidate(name: str) -> bool:
     return name.endswith(("_epoch_jd_tdb", "_revs", "_branch"))
 
@@ -99,7 +115,6 @@ def rank_anew(
         raise RequestError(
             f"{survey.path}: the survey does not store {by!r}; it has {', '.join(plan.stored)}"
         )
-    usual = rank.order if by == plan.rank_by else "least"
-    sign = -1.0 if (order or usual) == "most" else 1.0
+    sign = better_sign(survey, by) if order is None else (-1.0 if order == "most" else 1.0)
     apart = rank.apart_days if apart_days is None else apart_days
     return tabulate(plan, pick(survey.path, plan, by, sign, keep or rank.keep, apart)), by

@@ -13,11 +13,16 @@ from typing import Any
 from porkgrid.errors import RequestError
 from porkgrid.scenario import Scenario
 from porkgrid.survey.ledger import LEDGER
+from porkgrid.survey.lock import LOCK
+from porkgrid.survey.logbook import LOG
 from porkgrid.survey.store import STORE
 
 SCENARIO, PROVENANCE, CANDIDATES, FIGURES = "scenario.toml", "survey.json", "candidates.csv", "figures"
-OURS = (SCENARIO, CANDIDATES, FIGURES, STORE, LEDGER)  # besides survey.json, which says that they are
+# What is ours in a folder, as patterns, besides survey.json, which says that they are.
+OURS = (SCENARIO, CANDIDATES, FIGURES, STORE, LEDGER, "period-*.csv", "slip.csv", "trade.csv", "page.html",
+        "handoff")  # fmt: skip
 PART = ".part"  # ending of a file that is being written
+FORMAT = 2  # of the folder: raised when what is in it cannot be read as before
 
 # States of a survey: its folder is taken, its store is there, all is written.
 CLAIMED, RUNNING, COMPLETE = "claimed", "running", "complete"
@@ -40,7 +45,19 @@ def fingerprint(scenario: Scenario) -> str:
 
 
 def read_provenance(folder: Path) -> dict[str, Any]:
-    """The survey.json of a folder. RequestError where the folder is no survey."""
+    """The survey.json of a folder. RequestError where the folder is no survey, or one of another version."""
+    provenance = _survey_json(folder)
+    if provenance.get("format") != FORMAT:
+        made_by = provenance.get("versions", {}).get("porkgrid", "an older version")
+        raise RequestError(
+            f"{folder}: was made by porkgrid {made_by} in folder format {provenance.get('format', 1)}, and "
+            f"this one reads format {FORMAT}; sweep its scenario anew with --fresh"
+        )
+    return provenance
+
+
+def _survey_json(folder: Path) -> dict[str, Any]:
+    """The survey.json of a folder, of whatever version. RequestError where it is none of ours."""
     path = folder / PROVENANCE
     try:
         provenance = json.loads(path.read_text())
@@ -70,25 +87,28 @@ def write_whole(path: Path, text: str) -> None:
     part.replace(path)
 
 
-def claim(folder: Path, scenario: Scenario, fresh: bool) -> bool:
-    """Make the folder ready for the scenario's survey; True where one is already running or complete in it.
-
-    RequestError where the folder holds something else. Nothing is removed but what a survey.json, which is
-    the first file in a folder of ours, vouches for: under `fresh`, or of a sweep killed before its store was.
-    """
+def refuse_foreign(folder: Path) -> None:
+    """RequestError where the folder holds something else than a survey."""
     if folder.exists() and not folder.is_dir():
         raise RequestError(f"{folder}: is a file; give a folder with --out")
     held = sorted(each.name for each in folder.iterdir()) if folder.exists() else []
-    foreign = [name for name in held if name != PROVENANCE + PART]
-    if PROVENANCE in held:
-        state = read_provenance(folder)["state"]
+    foreign = [name for name in held if name not in (PROVENANCE + PART, LOCK, LOG)]
+    if foreign and PROVENANCE not in held:
+        raise RequestError(f"{folder}: holds other files ({foreign[0]}, …); give another folder with --out")
+
+
+def claim(folder: Path, scenario: Scenario, fresh: bool) -> bool:
+    """Make the folder ready for the scenario's survey; True where one is already running or complete in it.
+
+    RequestError where the folder holds another survey. Nothing is removed but what a survey.json, which is
+    the first file in a folder of ours, vouches for: under `fresh`, or of a sweep killed before its store was.
+    """
+    if (folder / PROVENANCE).exists():
+        _survey_json(folder)
         if not fresh:
             _same_scenario(folder, scenario)
-            if state != CLAIMED:
+            if read_provenance(folder)["state"] != CLAIMED:
                 return True
-    elif foreign:
-        raise RequestError(f"{folder}: holds other files ({foreign[0]}, …); give another folder with --out")
-    folder.mkdir(parents=True, exist_ok=True)
     write_provenance(folder, _first_provenance(scenario))
     _clear(folder)
     (folder / FIGURES).mkdir()
@@ -99,6 +119,7 @@ def claim(folder: Path, scenario: Scenario, fresh: bool) -> bool:
 def _first_provenance(scenario: Scenario) -> dict[str, Any]:
     return {
         "name": scenario.name,
+        "format": FORMAT,
         "state": CLAIMED,
         "fingerprint": fingerprint(scenario),
         "asked": asked(scenario),
@@ -124,9 +145,8 @@ def differences(held: dict[str, Any], scenario: Scenario) -> list[str]:
 
 
 def _clear(folder: Path) -> None:
-    for name in OURS:
-        path = folder / name
-        if path.is_dir():
+    for path in (found for pattern in OURS for found in folder.glob(pattern)):
+        if path.is_dir() and not path.is_symlink():
             shutil.rmtree(path)
         else:
             path.unlink(missing_ok=True)

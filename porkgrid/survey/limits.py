@@ -5,12 +5,15 @@ Each cell gets a word of bits, `blocked_by`; the cell is allowed where the word 
 
 from __future__ import annotations
 
+import math
 from collections.abc import Mapping
 from dataclasses import dataclass
 
 import numpy as np
+from numba import njit
 
 from porkgrid.physics.lambert import BAD_INPUT, NO_PLANE, NO_TRANSFER, NOT_AFTER
+from porkgrid.physics.timeflight import ROW
 from porkgrid.scenario import Limit
 from porkgrid.survey.cells import Cells
 from porkgrid.survey.measures import Measure
@@ -22,7 +25,10 @@ REASONS = {
     "no_transfer": "no such transfer",
 }
 REASON_OF_STATUS = {NOT_AFTER: 0, NO_PLANE: 1, NO_TRANSFER: 2, BAD_INPUT: 2}
-
+_REASON_WORDS = np.zeros(1 + max(REASON_OF_STATUS), dtype=np.uint32)  # by status
+for _status, _bit in REASON_OF_STATUS.items():
+    _REASON_WORDS[_status] = 1 << _bit
+_ANY_REASON = np.uint32((1 << len(REASONS)) - 1)
 
 BITS = 32  # of the word
 
@@ -48,6 +54,14 @@ class Bound:
         if self.own_title:
             return self.own_title
         return f"{_plain(self.measure)} {self._range().replace('-', '−')}{_unit(self.measure)}"
+
+    @property
+    def range(self) -> tuple[float, float]:
+        """Least and most, infinite where open."""
+        return (
+            -math.inf if self.least is None else self.least,
+            math.inf if self.most is None else self.most,
+        )
 
     def _range(self) -> str:
         if self.least is None:
@@ -92,15 +106,21 @@ def blocked_by(cells: Cells, bounds: tuple[Bound, ...]) -> np.ndarray:
 
     A cell with no flight has the bit of its reason only: its measures are not numbers to be limited.
     """
-    status = cells.status
-    word = np.zeros(status.shape, dtype=np.uint32)
-    for code, bit in REASON_OF_STATUS.items():
-        word |= np.where(status == code, np.uint32(1 << bit), np.uint32(0))
-    flown = word == 0
+    word = _REASON_WORDS[cells.status]
     for bit, bound in enumerate(bounds, start=len(REASONS)):
-        outside = bound.forbids(bound.measure.compute(cells)) & flown
-        word |= np.where(outside, np.uint32(1 << bit), np.uint32(0))
+        values = np.broadcast_to(bound.measure.compute(cells), word.shape)
+        _mark(np.ascontiguousarray(values, dtype=np.float64), *bound.range, np.uint32(1 << bit), word)
     return word
+
+
+@njit(**ROW)
+def _mark(values, least, most, flag, word):
+    """Add `flag` where a flown cell's value is outside; values and word are (n, m)."""
+    for i in range(word.shape[0]):
+        for j in range(word.shape[1]):
+            outside = not (least <= values[i, j] <= most)
+            grounded = (word[i, j] & _ANY_REASON) != 0
+            word[i, j] |= flag if outside and not grounded else np.uint32(0)
 
 
 def _plain(measure: Measure) -> str:

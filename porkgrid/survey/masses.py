@@ -15,7 +15,13 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from porkgrid.physics.burns import apsis_burn
-from porkgrid.physics.staging import mass_ratio, propellant_after, stage_dv_limit, stage_propellant, stage_structure
+from porkgrid.physics.staging import (
+    mass_ratio,
+    propellant_after,
+    stage_dv_limit,
+    stage_propellant,
+    stage_structure,
+)
 from porkgrid.scenario import Launcher, Scenario, Spacecraft, Stack, Stage
 from porkgrid.scenario.launchers import Capability, DlaPenalty
 from porkgrid.sky.bodies import Body, gm_of

@@ -63,6 +63,8 @@ class Plan:
     rank_sign: float  # +1: less is better; −1: more is better
     objective: Measure  # what a search for flyby dates makes least, with its own sign
     objective_sign: float
+    tile_cells: int = TILE_CELLS  # at most, in a tile
+    tile_columns: int = TILE_COLUMNS  # at most, in a tile of a direct route
     flown: dict = field(default_factory=dict)  # legs that are the same fly once: legtables
 
     @property
@@ -75,9 +77,9 @@ class Plan:
         """Rows and columns of a whole tile."""
         n, m = self.shape
         if self.flybys:  # a search reaches all arrivals at once, and is dear: many small tiles
-            return max(1, min(TILE_CELLS // m, -(-n // SEARCH_TILES))), m
-        columns = min(m, TILE_COLUMNS)
-        return min(n, max(1, TILE_CELLS // columns)), columns
+            return max(1, min(self.tile_cells // m, -(-n // SEARCH_TILES))), m
+        columns = min(m, self.tile_columns)
+        return min(n, max(1, self.tile_cells // columns)), columns
 
     @cached_property
     def tiles(self) -> tuple[Tile, ...]:
@@ -158,6 +160,8 @@ def make_plan(scenario: Scenario) -> Plan:
         rank_sign=sign,
         objective=objective,
         objective_sign=objective_sign,
+        tile_cells=TILE_CELLS,
+        tile_columns=TILE_COLUMNS,
     )
     if plan.flybys:
         refuse_unsearchable(plan)

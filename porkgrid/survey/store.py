@@ -14,9 +14,9 @@ from typing import Any
 import numpy as np
 import xarray as xr
 import zarr
-from zarr.codecs import BloscCodec, Crc32cCodec
 
 from porkgrid.sky.epochs import datetime64_from_jd
+from porkgrid.survey.chunks import codecs, encode, write_chunk
 from porkgrid.survey.limits import flag_names, flag_titles
 from porkgrid.survey.measures import BOTH, Measure
 from porkgrid.survey.plan import Plan, Tile
@@ -27,12 +27,14 @@ CAUTION = (
 )
 STORE = "grid.zarr"
 BLOCKED_BY = "blocked_by"
+NEVER_SWEPT = 0xFFFFFFFF  # `blocked_by` of cells that no tile has been written for
 
 
 def create_store(folder: Path, plan: Plan, version: str) -> None:
     """Make the empty store of a plan: coordinates and measures of one date whole, the rest without chunks."""
     path = folder / STORE
-    with warnings.catch_warnings():
+    # chunks of dates that are all 0 are written too: what is missing is a fault (survey.reading)
+    with warnings.catch_warnings(), zarr.config.set({"array.write_empty_chunks": True}):
         # consolidated metadata are outside the zarr 3 specification, which xarray reads and this warns of
         warnings.simplefilter("ignore", zarr.errors.ZarrUserWarning)
         _by_date(plan, version).to_zarr(path, mode="w", zarr_format=3, consolidated=False)
@@ -40,15 +42,14 @@ def create_store(folder: Path, plan: Plan, version: str) -> None:
         for name in plan.stored:
             measure = plan.measures[name]
             if measure.dims == BOTH:
-                _new_array(group, name, plan, stored_type(measure), np.nan, _attributes(measure))
-        _new_array(group, BLOCKED_BY, plan, np.uint32, 0xFFFFFFFF, _flags(plan))
+                _new_array(group, name, plan, stored_type(measure), _fill_value(name), _attributes(measure))
+        _new_array(group, BLOCKED_BY, plan, np.uint32, NEVER_SWEPT, _flags(plan))
         zarr.consolidate_metadata(path)
 
 
-def open_arrays(folder: Path) -> dict[str, zarr.Array]:
-    """The arrays of a store that tiles are written to, by name."""
-    group = zarr.open_group(folder / STORE, mode="r+")
-    return {name: array for name, array in group.arrays() if array.ndim == 2}
+def tiled(plan: Plan) -> list[str]:
+    """Names of the arrays that tiles are written to."""
+    return [*(name for name in plan.stored if plan.measures[name].dims == BOTH), BLOCKED_BY]
 
 
 def stored_type(measure: Measure) -> type:
@@ -56,10 +57,33 @@ def stored_type(measure: Measure) -> type:
     return np.float64 if measure.name.endswith("_epoch_jd_tdb") else np.float32
 
 
-def write_tile(arrays: Mapping[str, zarr.Array], tile: Tile, values: Mapping[str, np.ndarray]) -> None:
-    """Write one tile of every array. `values` hold (rows, columns) blocks."""
-    for name, array in arrays.items():
-        array[tile.rows, tile.columns] = values[name]
+def write_tile(folder: Path, plan: Plan, tile: Tile, values: Mapping[str, np.ndarray]) -> list[int]:
+    """Write one tile of every array, (rows, columns) blocks; the bytes of each in the order of `tiled`."""
+    place = chunk_of(plan, tile)
+    sizes = []
+    for name in tiled(plan):
+        content = encode(_filled(values[name], plan.chunks, _fill_value(name)))
+        write_chunk(f"{folder}/{STORE}/{name}", place, content)
+        sizes.append(len(content))
+    return sizes
+
+
+def chunk_of(plan: Plan, tile: Tile) -> tuple[int, int]:
+    """Which chunk of every array a tile is."""
+    return tile.rows.start // plan.chunks[0], tile.columns.start // plan.chunks[1]
+
+
+def _filled(values: np.ndarray, shape: tuple[int, int], fill: float) -> np.ndarray:
+    """The block in a whole chunk: at the grid's edges the rest of it is the fill value."""
+    if values.shape == shape:
+        return values
+    chunk = np.full(shape, fill, dtype=values.dtype)
+    chunk[: values.shape[0], : values.shape[1]] = values
+    return chunk
+
+
+def _fill_value(name: str) -> float:
+    return NEVER_SWEPT if name == BLOCKED_BY else np.nan
 
 
 def _by_date(plan: Plan, version: str) -> xr.Dataset:
@@ -120,7 +144,7 @@ def _new_array(
         chunks=plan.chunks,
         dtype=dtype,
         fill_value=fill,
-        compressors=[BloscCodec(cname="lz4", clevel=3, shuffle="bitshuffle"), Crc32cCodec()],
+        compressors=codecs(np.dtype(dtype)),
         dimension_names=BOTH,
         attributes=attributes,
     )

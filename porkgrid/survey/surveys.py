@@ -14,7 +14,10 @@ from porkgrid.scenario import Scenario
 from porkgrid.survey.admit import load_scenario
 from porkgrid.survey.folder import CANDIDATES, COMPLETE, SCENARIO, differences, fingerprint, read_provenance
 from porkgrid.survey.plan import Plan, make_plan
-from porkgrid.survey.store import STORE
+from porkgrid.survey.reading import open_grid
+from porkgrid.survey.store import BLOCKED_BY, STORE
+
+_RANK_AGAIN = "`porkgrid sweep` with the same scenario writes it again"
 
 
 class Survey:
@@ -26,13 +29,31 @@ class Survey:
 
     @cached_property
     def grid(self) -> xr.Dataset:
-        """The measures of every cell: dimensions `departure` and `arrival`, and `blocked_by`."""
-        return xr.open_zarr(self.path / STORE, chunks=None)
+        """The measures of every cell: dimensions `departure` and `arrival`, and `blocked_by`.
+
+        RequestError, here or when values are read, where the grid on disk is not as it was written.
+        """
+        grid, held = open_grid(self.path), self.provenance["grid"]
+        shape = {"departure": held["departure_dates"], "arrival": held["arrival_dates"]}
+        if dict(grid[BLOCKED_BY].sizes) != shape:
+            found = " × ".join(f"{size} {name}s" for name, size in grid[BLOCKED_BY].sizes.items())
+            raise RequestError(
+                f"{self.path / STORE}: is the grid of another survey: {found}, and this one has "
+                f"{' × '.join(map(str, shape.values()))} dates; sweep the survey's scenario anew with --fresh"
+            )
+        return grid
 
     @cached_property
     def candidates(self) -> pd.DataFrame:
-        """The ranked table: rank, ISO dates, then measures."""
-        return pd.read_csv(self.path / CANDIDATES)
+        """The ranked table: rank, ISO dates, then measures. RequestError where the file is not that."""
+        path = self.path / CANDIDATES
+        try:
+            table = pd.read_csv(path)
+        except (OSError, ValueError) as error:  # of a parser, of a decoder
+            raise RequestError(f"{path}: cannot be read: {error}; {_RANK_AGAIN}") from None
+        if "rank" not in table:
+            raise RequestError(f"{path}: has no column rank; {_RANK_AGAIN}")
+        return table
 
     @cached_property
     def scenario(self) -> Scenario:

@@ -3,40 +3,37 @@
 from __future__ import annotations
 
 import errno
-import os
 import platform
-import threading
 import time
-from collections.abc import Callable, Iterator
-from concurrent.futures import FIRST_COMPLETED, Future, ThreadPoolExecutor, wait
-from contextlib import contextmanager
-from dataclasses import dataclass
+from collections.abc import Callable, Generator, Iterator
+from concurrent.futures import ThreadPoolExecutor
+from contextlib import ExitStack, closing, contextmanager
+from dataclasses import replace
 from datetime import UTC, datetime
 from importlib.metadata import version
 from pathlib import Path
 from typing import Any
 
-from porkgrid.errors import RunError
+from porkgrid.errors import RequestError, RunError
 from porkgrid.scenario import Scenario
 from porkgrid.sky.kernel import sha256_of
 from porkgrid.survey import folder as folders
+from porkgrid.survey.budget import within, workers_of
 from porkgrid.survey.candidates import pick, tabulate
-from porkgrid.survey.ledger import enter, open_ledger, read_ledger, totals
+from porkgrid.survey.cluster import connected, on_cluster
+from porkgrid.survey.ledger import Ledger, added, read_ledger, totals
+from porkgrid.survey.lock import held
+from porkgrid.survey.logbook import log, logged
 from porkgrid.survey.plan import Plan, Tile, make_plan
-from porkgrid.survey.store import CAUTION, create_store, open_arrays, write_tile
+from porkgrid.survey.pool import in_threads
+from porkgrid.survey.progress import Pace, Progress
+from porkgrid.survey.store import CAUTION, create_store, write_tile
 from porkgrid.survey.surveys import Survey, open_survey
 from porkgrid.survey.tiles import TileSums, compute_tile
+from porkgrid.survey.verify import damaged_tiles
 
-
-@dataclass(frozen=True)
-class Progress:
-    """How far a sweep has come."""
-
-    tiles_done: int
-    tiles: int
-    cells_done: int
-    cells: int
-    best: float | None  # of the rank measure, so far
+# What the last bits of a number depend on: a sweep is not begun with one and finished with another.
+_MAKERS = ("porkgrid", "numpy", "numba")
 
 
 def sweep(
@@ -45,35 +42,74 @@ def sweep(
     workers: int | None = None,
     *,
     fresh: bool = False,
+    memory_bytes: float | None = None,
+    cluster: str | None = None,
+    flown: dict | None = None,
     report: Callable[[Progress], None] | None = None,
 ) -> Survey:
     """Sweep a scenario's grid and leave a survey folder.
 
-    A sweep that was interrupted goes on with the tiles that are missing; a finished one is only ranked
-    again. `out` is the folder (by default surveys/<slug>), `workers` the number of threads (by default one
-    per core), `fresh` starts anew, `report` is called after every tile.
+    A sweep that was interrupted goes on with the tiles that are missing or damaged; so does a finished one,
+    which is then ranked again. `out` is the folder (by default surveys/<slug>), `workers` the number of
+    threads (by default one per core), `fresh` starts anew, `memory_bytes` bounds the memory by smaller tiles
+    and fewer threads, `cluster` gives tiles to the workers of a dask scheduler at that address ("local"
+    starts one), `flown` holds legs that sweeps share, `report` is called after every tile.
 
     Raises RequestError for a request that cannot be met (a date outside the kernel, a folder that holds
-    something else), RunError where writing fails, KeyboardInterrupt after the tiles in hand are saved.
+    something else or that another process sweeps into), RunError where writing fails, KeyboardInterrupt after
+    the tiles in hand are saved.
     """
-    plan = make_plan(scenario)
+    plan, threads = within(make_plan(scenario), workers_of(workers), memory_bytes)
+    plan = plan if flown is None else replace(plan, flown=flown)
     folder = folders.folder_of(scenario, out)
-    with _disk_faults(folder):
+    folders.refuse_foreign(folder)
+    with _disk_faults(folder), held(folder) as dead, logged(folder):
+        if dead:
+            log.info("the sweep of %s ended without a word; going on from what it wrote", dead)
         begun = folders.claim(folder, scenario, fresh)
         provenance = folders.read_provenance(folder) if begun else _begin(folder, plan)
-        if provenance["state"] != folders.COMPLETE:
+        plan = replace(plan, **provenance["tiles"])
+        missing = _missing(folder, plan)
+        if missing:
+            if begun:
+                _same_makers(folder, plan, provenance)
             with ThreadPoolExecutor(1) as aside:
-                kernels = aside.submit(_kernels, plan)  # reads the whole kernel: the tiles need not wait
-                _fill(folder, plan, workers or os.cpu_count() or 1, report)
-                provenance["kernels"] = kernels.result()
+                # reads the whole kernel: the tiles need not wait
+                noted = aside.submit(_note_kernels, folder, plan, provenance)
+                _fill(folder, plan, missing, threads, cluster, report)
+                noted.result()
         _finish(folder, plan, provenance)
     return open_survey(folder)
+
+
+def _note_kernels(folder: Path, plan: Plan, provenance: dict[str, Any]) -> None:
+    """Add the kernel files to the provenance, unless they are there."""
+    if "kernels" not in provenance:
+        provenance["kernels"] = _kernels(plan)
+        folders.write_provenance(folder, provenance)
 
 
 def _kernels(plan: Plan) -> list[dict[str, str]]:
     return [
         {"name": name, "file": path.name, "sha256": sha256_of(path)} for name, path in plan.ephemeris.files
     ]
+
+
+def _same_makers(folder: Path, plan: Plan, provenance: dict[str, Any]) -> None:
+    """Refuse to go on with other versions, or another ephemeris, than those that the sweep began with."""
+    begun_with = provenance.get("versions", {})
+    other = [
+        f"{name} {begun_with.get(name, '(unknown)')} (this is {version(name)})"
+        for name in _MAKERS
+        if begun_with.get(name) != version(name)
+    ]
+    if "kernels" in provenance and (now := _kernels(plan)) != provenance["kernels"]:
+        told = {each["name"]: each["sha256"] for each in provenance["kernels"]}
+        other += [f"another {each['name']}" for each in now if told.get(each["name"]) != each["sha256"]]
+    if other:
+        raise RequestError(
+            f"{folder}: was begun with {', '.join(other)}; go on with that, or start anew with --fresh"
+        )
 
 
 def _begin(folder: Path, plan: Plan) -> dict[str, Any]:
@@ -88,6 +124,7 @@ def _begin(folder: Path, plan: Plan) -> dict[str, Any]:
         }
         | {"python": platform.python_version()},
         "bodies": {table.body.name: table.body.motion for table in plan.tables},
+        "tiles": {"tile_cells": plan.tile_cells, "tile_columns": plan.tile_columns},
         "grid": {"departure_dates": plan.shape[0], "arrival_dates": plan.shape[1]},
         "conventions": "km, km/s, deg; ICRF axes; epochs TDB; patched conics about the Sun as a point mass",
         "caution": CAUTION,
@@ -96,49 +133,60 @@ def _begin(folder: Path, plan: Plan) -> dict[str, Any]:
     return provenance
 
 
-def _fill(folder: Path, plan: Plan, workers: int, report: Callable[[Progress], None] | None) -> None:
-    """Compute and write the tiles that are missing, on a pool of threads."""
-    arrays = open_arrays(folder)
+def _missing(folder: Path, plan: Plan) -> list[Tile]:
+    """The tiles that are not on disk, or damaged there."""
     entries = read_ledger(folder)
-    missing = [tile for tile in plan.tiles if tile.number not in entries]
-    if plan.flybys and missing:
+    damaged = set(damaged_tiles(folder, plan, entries))
+    if damaged:
+        log.warning(
+            "%s: %d of %d tiles are damaged on disk and will be computed again",
+            folder, len(damaged), len(entries),
+        )  # fmt: skip
+    return [tile for tile in plan.tiles if tile.number not in entries or tile.number in damaged]
+
+
+def _fill(
+    folder: Path,
+    plan: Plan,
+    missing: list[Tile],
+    workers: int,
+    cluster: str | None,
+    report: Callable[[Progress], None] | None,
+) -> None:
+    """Compute and write tiles, on a pool of threads or on a cluster."""
+    place = f"{workers} workers" if cluster is None else f"cluster {cluster}"
+    log.info("%d of %d tiles to compute, %s", len(missing), len(plan.tiles), place)
+    again = {tile.number for tile in missing}
+    there = [sums for number, sums in read_ledger(folder).items() if number not in again]
+    so_far, done = totals(there, plan.rank_sign), len(there)
+    pace = Pace(plan, so_far)
+    with ExitStack() as stack:
+        ledger = stack.enter_context(Ledger(folder))
+        if cluster is None:
+            swept = _on_threads(folder, plan, missing, workers, ledger)
+        else:
+            client = stack.enter_context(connected(cluster))
+            swept = on_cluster(client, folder, plan, missing, ledger.enter)
+        for sums in stack.enter_context(closing(swept)):
+            so_far, done = added(so_far, sums, plan.rank_sign), done + 1
+            progress = pace.progress(done, so_far)
+            if report:
+                report(progress)
+
+
+def _on_threads(
+    folder: Path, plan: Plan, missing: list[Tile], workers: int, ledger: Ledger
+) -> Generator[TileSums]:
+    if plan.flybys:
         _ = plan.search  # made once, before the threads share it
-    stop = threading.Event()
-    lock = threading.Lock()
-    with open_ledger(folder) as ledger:
 
-        def work(tile: Tile) -> TileSums | None:
-            if stop.is_set():
-                return None
-            values, sums = compute_tile(plan, tile)
-            write_tile(arrays, tile, values)
-            with lock:
-                enter(ledger, sums)
-            return sums
+    def work(tile: Tile) -> TileSums:
+        values, sums = compute_tile(plan, tile)
+        sums = replace(sums, sizes=tuple(write_tile(folder, plan, tile, values)))
+        ledger.enter(sums)
+        return sums
 
-        with ThreadPoolExecutor(workers) as pool:
-            try:
-                for sums in _as_done([pool.submit(work, tile) for tile in missing]):
-                    if sums is not None:
-                        entries[sums.tile] = sums
-                    if report:
-                        report(_progress(plan, entries))
-            except BaseException:
-                stop.set()  # the tiles in hand are finished and entered before the pool closes
-                raise
-
-
-def _as_done(futures: list[Future[TileSums | None]]) -> Iterator[TileSums | None]:
-    pending = set(futures)
-    while pending:
-        done, pending = wait(pending, return_when=FIRST_COMPLETED)
-        for future in done:
-            yield future.result()
-
-
-def _progress(plan: Plan, entries: dict[int, TileSums]) -> Progress:
-    so_far = totals(entries.values(), plan.rank_sign)
-    return Progress(len(entries), len(plan.tiles), so_far.cells, plan.shape[0] * plan.shape[1], so_far.best)
+    return in_threads(work, missing, workers)
 
 
 def _finish(folder: Path, plan: Plan, provenance: dict[str, Any]) -> None:
@@ -149,6 +197,7 @@ def _finish(folder: Path, plan: Plan, provenance: dict[str, Any]) -> None:
     sums = totals(read_ledger(folder).values(), plan.rank_sign)
     if provenance["state"] == folders.COMPLETE:
         return
+    log.info("complete: %d of %d cells allowed, %d candidates", sums.allowed, sums.cells, len(table))
     started = datetime.fromisoformat(provenance["started"])
     seconds = (datetime.now(UTC) - started).total_seconds()
     provenance |= {

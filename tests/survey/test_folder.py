@@ -14,11 +14,13 @@ from porkgrid.survey.folder import (
     fingerprint,
     folder_of,
     read_provenance,
+    refuse_foreign,
     write_provenance,
     write_whole,
 )
+from porkgrid.survey.lock import held
 
-STARTS = {"scenario.toml", "survey.json", "figures"}
+STARTS = {"scenario.toml", "survey.json", "figures", "sweep.lock"}
 
 
 @pytest.fixture(scope="module")
@@ -36,13 +38,20 @@ def folder(tmp_path):
     return tmp_path / "survey"
 
 
+def take(folder, scenario, fresh):
+    """Claim a folder as a sweep does."""
+    refuse_foreign(folder)
+    with held(folder):
+        return claim(folder, scenario, fresh)
+
+
 def listing(folder):
     return {path.name for path in folder.iterdir()}
 
 
 def begin(folder, scenario, state=folders.RUNNING):
     """Claim a folder, as far as a sweep whose store has been made."""
-    claim(folder, scenario, fresh=False)
+    take(folder, scenario, fresh=False)
     write_provenance(folder, read_provenance(folder) | {"state": state})
     (folder / "grid.zarr").mkdir()
 
@@ -85,7 +94,7 @@ def test_a_scenario_is_the_same_from_wherever_it_is_read(tmp_path, monkeypatch):
 def test_a_new_or_empty_folder_is_claimed(folder, scenario, there):
     if there:
         folder.mkdir()
-    assert claim(folder, scenario, fresh=False) is False
+    assert take(folder, scenario, fresh=False) is False
     assert listing(folder) == STARTS
     assert (folder / "scenario.toml").read_text() == scenario.text
     assert read_provenance(folder)["state"] == folders.CLAIMED
@@ -94,7 +103,7 @@ def test_a_new_or_empty_folder_is_claimed(folder, scenario, there):
 @pytest.mark.parametrize("state", [folders.RUNNING, folders.COMPLETE])
 def test_the_same_scenario_finds_its_survey_again(folder, scenario, state):
     begin(folder, scenario, state)
-    assert claim(folder, scenario, fresh=False) is True
+    assert take(folder, scenario, fresh=False) is True
     assert "grid.zarr" in listing(folder)
 
 
@@ -102,7 +111,7 @@ def test_another_survey_is_refused_and_the_difference_named(folder, scenario, ot
     begin(folder, scenario)
     before = listing(folder)
     with pytest.raises(RequestError, match=r"another survey, 'Rook to Mars'.* differs in limits; .*--fresh"):
-        claim(folder, other, fresh=False)
+        take(folder, other, fresh=False)
     assert listing(folder) == before
     assert read_provenance(folder)["fingerprint"] == fingerprint(scenario)
 
@@ -112,7 +121,7 @@ def test_fresh_replaces_a_survey_and_nothing_else_in_its_folder(folder, scenario
     (folder / "notes.txt").write_text("keep me")
     (folder / "candidates.csv").write_text("old")
     (folder / "tiles.jsonl").write_text("old")
-    assert claim(folder, other, fresh=True) is False
+    assert take(folder, other, fresh=True) is False
     assert listing(folder) == STARTS | {"notes.txt"}
     assert (folder / "scenario.toml").read_text() == other.text
     assert read_provenance(folder)["fingerprint"] == fingerprint(other)
@@ -124,7 +133,7 @@ def test_a_folder_without_a_survey_of_ours_is_never_written_to(folder, scenario,
     (folder / name).parent.mkdir(parents=True)
     (folder / name).write_text("mine")
     with pytest.raises(RequestError, match="holds other files"):
-        claim(folder, scenario, fresh)
+        take(folder, scenario, fresh)
     assert (folder / name).read_text() == "mine"
     assert "survey.json" not in listing(folder)
 
@@ -134,14 +143,14 @@ def test_a_survey_json_of_something_else_is_refused_also_by_fresh(folder, scenar
     (folder / "survey.json").write_text('{"responses": 12}')
     for fresh in (False, True):
         with pytest.raises(RequestError, match="not the provenance of a porkgrid survey"):
-            claim(folder, scenario, fresh)
-    assert listing(folder) == {"survey.json"}
+            take(folder, scenario, fresh)
+    assert listing(folder) == {"survey.json", "sweep.lock"}
 
 
 def test_a_file_is_no_folder(tmp_path, scenario):
     (tmp_path / "file").write_text("")
     with pytest.raises(RequestError, match="is a file"):
-        claim(tmp_path / "file", scenario, fresh=False)
+        take(tmp_path / "file", scenario, fresh=False)
 
 
 def test_a_claim_that_was_killed_at_any_step_can_be_made_again(folder, scenario, monkeypatch):
@@ -152,12 +161,12 @@ def test_a_claim_that_was_killed_at_any_step_can_be_made_again(folder, scenario,
         with monkeypatch.context() as patch:
             count = killing(patch, stop)
             try:
-                claim(folder_here, scenario, fresh=False)
+                take(folder_here, scenario, fresh=False)
             except Killed:
                 steps += 1
         if count[0] < stop:
             break
-        assert claim(folder_here, scenario, fresh=False) is False
+        assert take(folder_here, scenario, fresh=False) is False
         assert listing(folder_here) >= STARTS
         assert not any(name.endswith(".part") for name in listing(folder_here))
     assert steps > 5

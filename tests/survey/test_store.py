@@ -1,6 +1,7 @@
 """The grid on disk, read back by xarray and zarr alone."""
 
 import warnings
+from dataclasses import replace
 
 import numpy as np
 import pytest
@@ -9,7 +10,7 @@ import zarr
 
 from porkgrid.survey.measures import BOTH
 from porkgrid.survey.plan import Tile
-from porkgrid.survey.store import STORE, create_store, open_arrays, write_tile
+from porkgrid.survey.store import BLOCKED_BY, STORE, chunk_of, create_store, tiled, write_tile
 from porkgrid.survey.tiles import compute_tile
 
 
@@ -74,11 +75,19 @@ def test_every_tile_is_one_chunk(survey):
     assert len(chunks) == 12
 
 
-def test_tiles_that_are_not_written_are_no_numbers_and_not_allowed(rook, small_tiles, tmp_path):
+@pytest.fixture(scope="module")
+def tiled_rook(rook):
+    """ROOK in tiles of 8 × 32 cells."""
+    return replace(rook, tile_cells=256, tile_columns=32)
+
+
+def test_tiles_that_are_not_written_are_no_numbers_and_not_allowed(tiled_rook, tmp_path):
+    rook = tiled_rook
     create_store(tmp_path, rook, "0")
-    tile = Tile(9, slice(16, 24), slice(32, 59))
+    tile = Tile(5, slice(16, 24), slice(32, 59))
     values, _ = compute_tile(rook, tile)
-    write_tile(open_arrays(tmp_path), tile, values)
+    assert tile in rook.tiles
+    write_tile(tmp_path, rook, tile, values)
     grid = xr.open_zarr(tmp_path / STORE, chunks=None)
     there = np.zeros(rook.shape, bool)
     there[tile.rows, tile.columns] = True
@@ -87,10 +96,24 @@ def test_tiles_that_are_not_written_are_no_numbers_and_not_allowed(rook, small_t
     assert np.array_equal(grid["blocked_by"].values[there], values["blocked_by"].ravel())
 
 
+def test_a_tile_is_the_chunk_of_its_rows_and_columns_and_tells_its_bytes(tiled_rook, tmp_path):
+    rook = tiled_rook
+    create_store(tmp_path, rook, "0")
+    assert [chunk_of(rook, tile) for tile in rook.tiles] == [(i, j) for i in range(6) for j in range(2)]
+    tile = rook.tiles[-1]
+    sizes = write_tile(tmp_path, rook, tile, compute_tile(rook, tile)[0])
+    paths = [tmp_path / STORE / name / "c" / "5" / "1" for name in tiled(rook)]
+    assert sizes == [path.stat().st_size for path in paths]
+    assert tiled(rook)[-1] == BLOCKED_BY
+    assert set(tiled(rook)) == {name for name in rook.stored if rook.measures[name].dims == BOTH} | {
+        BLOCKED_BY
+    }
+
+
 def test_a_byte_that_has_changed_on_disk_is_noticed(rook, tmp_path):
     create_store(tmp_path, rook, "0")
     tile = rook.tiles[0]
-    write_tile(open_arrays(tmp_path), tile, compute_tile(rook, tile)[0])
+    write_tile(tmp_path, rook, tile, compute_tile(rook, tile)[0])
     chunk = tmp_path / STORE / "c3_km2_s2" / "c" / "0" / "0"
     data = bytearray(chunk.read_bytes())
     data[len(data) // 2] ^= 1

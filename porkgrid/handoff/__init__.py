@@ -1,0 +1,1 @@
+"""What leaves for detailed analysis: the full-force check and the files it is handed on in."""

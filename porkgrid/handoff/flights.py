@@ -1,0 +1,76 @@
+"""Fly from a body's periapsis out into the Solar System: first told from the body, then from the Sun.
+
+Near a body a place from the Sun has too few digits: of 1e8 km a double holds 1e-8, which periapsis
+stretches by a factor of a million until the next encounter. Told from the body the same motion keeps ten
+thousand times more.
+"""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from porkgrid.handoff.forces import Forces
+from porkgrid.physics.nbody import CENTRE, Arc, acceleration, fly, fly_with_sensitivity
+from porkgrid.physics.tracks import state_on_track
+from porkgrid.sky.bodies import Body
+
+Floats = NDArray[np.float64]
+
+# How long a flight is told from the body, in times sqrt(r³/GM) of its periapsis, at which it is some hundred
+# radii out; and the most of a flight for that.
+_NEAR_TIMES, _NEAR_SHARE = 100.0, 0.25
+
+
+@dataclass(frozen=True, eq=False)
+class Outset:
+    """Where a flight starts, forwards or backwards: state (6,) from the body at a time of the field."""
+
+    body: Body
+    t_s: float
+    relative: Floats
+
+
+def carry(forces: Forces, outset: Outset, until_s: float) -> Arc:
+    """Fly until a time: the path as states from the Sun."""
+    origin = forces.index(outset.body)
+    switch_s = _switch_s(outset, until_s)
+    near = fly(forces.field, outset.t_s, switch_s, outset.relative, origin)
+    carried = np.stack([body_state(forces, outset.body, t) for t in near.t_s], axis=1)
+    from_sun = near.states + carried
+    far = fly(forces.field, switch_s, until_s, from_sun[:, -1], CENTRE)
+    return Arc(np.concatenate([near.t_s, far.t_s[1:]]), np.concatenate([from_sun, far.states[:, 1:]], axis=1))
+
+
+def carry_with_sensitivity(forces: Forces, outset: Outset, until_s: float) -> tuple[Floats, Floats]:
+    """Fly until a time: state (6,) from the Sun, and its sensitivity (6, 6) to the state at the outset."""
+    origin = forces.index(outset.body)
+    switch_s = _switch_s(outset, until_s)
+    near, first = fly_with_sensitivity(forces.field, outset.t_s, switch_s, outset.relative, origin)
+    from_sun = near + body_state(forces, outset.body, switch_s)
+    far, second = fly_with_sensitivity(forces.field, switch_s, until_s, from_sun, CENTRE)
+    return far, second @ first
+
+
+def rate(forces: Forces, outset: Outset) -> Floats:
+    """How the state from the body changes at the outset, (6,) per s."""
+    pull = acceleration(forces.field, outset.t_s, outset.relative, forces.index(outset.body))
+    return np.concatenate([outset.relative[3:], pull])
+
+
+def body_state(forces: Forces, body: Body, t_s: float) -> Floats:
+    """State (6,) of a body from the Sun at a time of the field."""
+    place, velocity, _ = state_on_track(forces.field.tracks, forces.index(body), t_s)
+    return np.concatenate([place, velocity])
+
+
+def _switch_s(outset: Outset, until_s: float) -> float:
+    whole = until_s - outset.t_s
+    gm, radius = outset.body.gm_km3_s2, float(np.linalg.norm(outset.relative[:3]))
+    if gm is None or radius == 0.0:
+        return outset.t_s + _NEAR_SHARE * whole
+    near = _NEAR_TIMES * math.sqrt(radius**3 / gm)
+    return outset.t_s + math.copysign(min(near, _NEAR_SHARE * abs(whole)), whole)

@@ -1,0 +1,303 @@
+"""The page in a real browser: what it reads, hides, ranks and sorts is what the survey holds."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+import numpy as np
+import pytest
+from review_scenarios import CUCKOO, HOSTILE, STARLING
+from review_tab import drawn, place_of, point_at, readings, rows, set_limit, settled
+
+from porkgrid.survey.candidates import epoch_names
+from porkgrid.survey.rank import distinct, local_bests
+
+pytestmark = pytest.mark.browser
+
+
+def stored(survey, name: str) -> np.ndarray:
+    """A stored variable as (departures, arrivals)."""
+    grid = survey.grid
+    return grid[name].broadcast_like(grid["blocked_by"]).transpose("departure", "arrival").values
+
+
+@pytest.fixture
+def tab(visit, rook_page):
+    return visit(rook_page)
+
+
+@pytest.mark.parametrize(("i", "j"), [(0, 0), (20, 30), (42, 58)])
+def test_the_crosshair_reads_what_the_store_holds(tab, rook, i, j):
+    point_at(tab, i, j)
+    read = readings(tab, "here")
+    assert len(read) > 20
+    for name in read:
+        value = float(stored(rook, name)[i, j])
+        assert (float(read[name][1]) if read[name][1] else np.nan) == pytest.approx(
+            value, rel=0, abs=0, nan_ok=True
+        )
+    flag = stored(rook, "blocked_by")[i, j]
+    assert tab.locator("#status").text_content().endswith("allowed.") == (flag == 0)
+
+
+def test_numbers_are_shown_rounded_as_their_unit_is_worth(tab, rook):
+    point_at(tab, 20, 30)
+    value = float(stored(rook, "c3_km2_s2")[20, 30])
+    assert readings(tab, "here")["c3_km2_s2"][0] == f"{value:.2f}"
+
+
+def test_the_chart_shows_the_allowed_cells_and_no_others(tab, rook):
+    allowed = stored(rook, "blocked_by") == 0
+    values = np.where(allowed, stored(rook, "dv_total_km_s"), np.nan)
+    np.testing.assert_array_equal(drawn(tab), values.T)
+
+
+@pytest.mark.parametrize("most", [14.0, 25.0, 60.0], ids=["tighter", "the same", "looser"])
+def test_moving_a_limit_hides_exactly_the_cells_outside(tab, rook, most):
+    set_limit(tab, "c3_km2_s2", "most", most)
+    np.testing.assert_array_equal(np.isfinite(drawn(tab)), moved_c3(rook, most).T)
+
+
+def moved_c3(survey, most: float) -> np.ndarray:
+    """The cells that are allowed when C3 may be so much and the other limits stand."""
+    names = survey.grid["blocked_by"].attrs["flag_meanings"].split()
+    others = stored(survey, "blocked_by") & ~np.uint32(1 << names.index("c3_km2_s2"))
+    return (others == 0) & (stored(survey, "c3_km2_s2") <= most)
+
+
+def test_a_slider_moves_its_limit(tab, rook):
+    slider = tab.locator('#sliders [data-limit="tof_days"], #sliders [data-limit="c3_km2_s2"]').first.locator(
+        'input[type="range"]'
+    )
+    before = np.isfinite(drawn(tab)).sum()
+    slider.focus()
+    for _ in range(20):
+        slider.press("ArrowLeft")
+    settled(tab)
+    most = float(slider.input_value())
+    assert most < 25.0
+    assert 0 < np.isfinite(drawn(tab)).sum() < before
+    number = tab.locator('#sliders [data-limit="c3_km2_s2"] input[type="number"]')
+    set_to = float(number.input_value())
+    assert set_to == pytest.approx(most, rel=1e-5)
+    np.testing.assert_array_equal(np.isfinite(drawn(tab)), moved_c3(rook, set_to).T)
+
+
+def test_a_limit_left_out_lets_its_cells_pass_and_as_swept_brings_it_back(tab, rook):
+    at_first = drawn(tab)
+    tab.locator('#sliders [data-limit="c3_km2_s2"] input[type="checkbox"]').uncheck()
+    settled(tab)
+    np.testing.assert_array_equal(np.isfinite(drawn(tab)), moved_c3(rook, np.inf).T)
+    tab.locator("#reset").click()
+    settled(tab)
+    np.testing.assert_array_equal(drawn(tab), at_first)
+
+
+def test_a_limit_can_be_added_on_any_measure(tab, rook):
+    tab.locator("#more").select_option("sun_max_au")
+    settled(tab)
+    before = np.isfinite(drawn(tab))
+    np.testing.assert_array_equal(before, (stored(rook, "blocked_by") == 0).T)
+    set_limit(tab, "sun_max_au", "most", 1.5)
+    allowed = (stored(rook, "blocked_by") == 0) & (stored(rook, "sun_max_au") <= 1.5)
+    assert 0 < allowed.sum() < before.sum()
+    np.testing.assert_array_equal(np.isfinite(drawn(tab)), allowed.T)
+
+
+def test_candidates_of_the_sweep_are_listed_as_they_were_ranked(tab, rook):
+    listed = rows(tab)
+    exact = rook.candidates
+    assert [row["key"] for row in listed] == [f"exact-{rank}" for rank in exact["rank"]]
+    assert [row["cells"]["stop-0"] for row in listed] == list(exact["departure"])
+
+
+@pytest.mark.parametrize("most", [14.0, 40.0], ids=["tighter", "looser"])
+def test_moving_a_limit_ranks_anew(tab, rook, most):
+    set_limit(tab, "c3_km2_s2", "most", most)
+    listed = rows(tab)
+    exact = rook.candidates
+    still = [f"exact-{row['rank']}" for _, row in exact.iterrows() if row["c3_km2_s2"] <= most]
+    assert [row["key"] for row in listed if row["key"].startswith("exact")] == still
+    dates = {(row["cells"]["stop-0"], row["cells"]["stop-1"]) for row in listed}
+    of_page = {
+        (row["cells"]["stop-0"], row["cells"]["stop-1"])
+        for row in listed
+        if not row["key"].startswith("exact")
+    }
+    wanted = best_dates(rook, moved_c3(rook, most))
+    assert of_page  # the limit has moved enough for new bests
+    assert of_page <= wanted <= dates
+    values = [float(row["cells"]["dv_total_km_s"]) for row in listed]
+    assert values == sorted(values)
+
+
+def best_dates(survey, allowed: np.ndarray) -> set[tuple[str, str]]:
+    """Dates of the distinct local bests as the sweep would rank them."""
+    cost, blocked = stored(survey, "dv_total_km_s"), np.where(allowed, 0, 1).astype(np.uint32)
+    i, j, _ = local_bests(lambda band: (cost[band], blocked[band]), len(cost), 1.0)
+    epochs = np.column_stack([stored(survey, name)[i, j] for name in epoch_names(survey.plan)])
+    rank = survey.scenario.rank
+    days = [np.datetime_as_string(survey.grid[side].values, "D") for side in ("departure", "arrival")]
+    return {(days[0][i[k]], days[1][j[k]]) for k in distinct(epochs, rank.apart_days, rank.keep)}
+
+
+def test_ranking_by_another_measure_puts_its_best_first(tab, rook):
+    tab.locator("#measure").select_option("tof_days")
+    settled(tab)
+    values = [float(row["cells"]["tof_days"]) for row in rows(tab)]
+    allowed = stored(rook, "blocked_by") == 0
+    assert values == sorted(values)
+    assert values[0] == stored(rook, "tof_days")[allowed].min()
+
+
+def test_columns_sort_both_ways(tab):
+    heading = tab.locator('#table th[data-column="c3_km2_s2"]')
+    for direction, reverse in (("ascending", False), ("descending", True)):
+        heading.locator("button").click()
+        values = [float(row["cells"]["c3_km2_s2"]) for row in rows(tab)]
+        assert heading.get_attribute("aria-sort") == direction
+        assert values == sorted(values, reverse=reverse)
+        assert len(set(values)) > 1
+
+
+def test_a_row_puts_its_mark_in_the_chart_and_its_numbers_beside(tab, rook):
+    tab.locator("#table tbody tr").nth(1).click()
+    settled(tab)
+    row = rook.candidates.iloc[1]
+    ring = tab.evaluate(
+        "() => { const t = document.getElementById('chart').data[4]; return [t.x[0], t.y[0]]; }"
+    )
+    assert ring == [row["departure"], row["arrival"]]
+    for name, (_, full) in readings(tab, "chosen").items():
+        assert float(full) == row[name]
+
+
+def test_a_click_beside_a_mark_takes_its_row(tab, rook):
+    second = rook.candidates.iloc[1]
+    i = int(np.searchsorted(stored(rook, "departure_epoch_jd_tdb")[:, 0], second["departure_epoch_jd_tdb"]))
+    j = int(np.searchsorted(stored(rook, "arrival_epoch_jd_tdb")[0], second["arrival_epoch_jd_tdb"]))
+    point_at(tab, i, j)
+    tab.mouse.click(*place_of(tab, i, j))
+    settled(tab)
+    assert tab.locator('#table tr[aria-selected="true"]').get_attribute("data-key") == "exact-2"
+
+
+def test_a_held_crosshair_stays_until_it_is_let_go(tab):
+    point_at(tab, 30, 50)
+    tab.mouse.click(*place_of(tab, 30, 50))
+    held = tab.locator("#status").text_content()
+    tab.mouse.move(*place_of(tab, 10, 20))
+    tab.wait_for_timeout(100)
+    assert tab.locator("#status").text_content() == held
+    tab.locator("#chart").press("Escape")
+    point_at(tab, 12, 22)
+    assert tab.locator("#status").text_content() != held
+
+
+def test_arrow_keys_move_the_crosshair_by_dates(tab, rook):
+    tab.locator("#chart").focus()
+    dates = [np.datetime_as_string(rook.grid[side].values, "D") for side in ("departure", "arrival")]
+    first = rook.candidates.iloc[0]
+    i, j = list(dates[0]).index(first["departure"]), list(dates[1]).index(first["arrival"])
+    for key, di, dj in (
+        ("ArrowRight", 1, 0),
+        ("ArrowUp", 0, 1),
+        ("ArrowLeft", -1, 0),
+        ("Shift+ArrowDown", 0, -10),
+    ):
+        tab.keyboard.press(key)
+        i, j = i + di, j + dj
+        stops = tab.locator("#readings .stop .here").all_text_contents()
+        assert stops == [dates[0][i], dates[1][j]]
+
+
+def test_the_table_can_be_worked_from_the_keyboard(tab):
+    tab.locator("#table tbody tr").first.focus()
+    tab.keyboard.press("ArrowDown")
+    tab.keyboard.press("Enter")
+    assert tab.locator('#table tr[aria-selected="true"]').get_attribute("data-key") == "exact-2"
+    tab.keyboard.press("ArrowUp")
+    tab.keyboard.press(" ")
+    assert tab.locator('#table tr[aria-selected="true"]').get_attribute("data-key") == "exact-1"
+
+
+def test_every_control_has_a_name(tab):
+    unnamed = tab.evaluate(
+        """() => Array.from(document.querySelectorAll("input, select, button"))
+          .filter((each) => !each.labels?.length && !each.getAttribute("aria-label"))
+          .filter((each) => !each.textContent.trim())
+          .map((each) => each.outerHTML)"""
+    )
+    assert unnamed == []
+
+
+def test_colours_follow_the_switch(tab):
+    def ground() -> str:
+        return str(tab.evaluate("() => getComputedStyle(document.body).backgroundColor"))
+
+    light = ground()
+    tab.locator("#theme").select_option("dark")
+    settled(tab)
+    assert ground() != light
+    tab.locator("#theme").select_option("light")
+    settled(tab)
+    assert ground() == light
+
+
+def test_a_hostile_name_stays_text(visit, swept, page_of):
+    survey = swept(CUCKOO, "cuckoo")
+    tab = visit(page_of(survey.path))
+    name = HOSTILE.replace('\\"', '"')
+    assert tab.evaluate("() => window.taken") is None
+    assert tab.locator("#title").text_content() == name
+    assert tab.locator("#description").text_content() == name
+    assert tab.title() == name
+    assert tab.locator("img").count() == 0
+
+
+def test_several_surveys_share_a_page(visit, rook, swept, page_of):
+    starling = swept(STARLING, "starling")
+    tab = visit(page_of(rook.path, starling.path))
+    tab.locator("#measure").select_option("c3_km2_s2")
+    tab.locator("#survey").select_option("1")
+    tab.wait_for_function("document.documentElement.dataset.ready === '1'")
+    assert tab.locator("#title").text_content() == "Starling to Mars"
+    assert tab.locator("#measure").input_value() == "c3_km2_s2"
+    allowed = stored(starling, "blocked_by") == 0
+    np.testing.assert_array_equal(drawn(tab), np.where(allowed, stored(starling, "c3_km2_s2"), np.nan).T)
+
+
+def test_a_survey_half_swept_says_what_is_missing_and_shows_the_rest(visit, half_rook, page_of, rook):
+    folder, done = half_rook
+    tab = visit(page_of(folder))
+    share = 1.0 - done_cells(folder) / rook.grid["blocked_by"].size
+    banner = tab.locator("#missing").text_content()
+    assert f"{100 * share:.1f} % of the cells are missing ({12 - done} of 12 tiles)" in banner
+    there = drawn(tab)
+    whole = np.where(stored(rook, "blocked_by") == 0, stored(rook, "dv_total_km_s"), np.nan).T
+    assert 0 < np.isfinite(there).sum() < np.isfinite(whole).sum()
+    shown = np.isfinite(there)
+    np.testing.assert_array_equal(there[shown], whole[shown])
+
+
+def done_cells(folder: Path) -> int:
+    from porkgrid.survey.ledger import read_ledger
+
+    return sum(sums.cells for sums in read_ledger(folder).values())
+
+
+def test_figures_of_the_chosen_candidate_are_shown(visit, swept, page_of):
+    from survey_scenarios import ROOK
+
+    from porkgrid.figures.draw import draw_path_of
+
+    survey = swept(ROOK, "drawn")
+    draw_path_of(survey, 1, ["svg"])
+    tab = visit(page_of(survey.path))
+    image = tab.locator("#figures img")
+    image.wait_for()
+    tab.wait_for_function("document.querySelector('#figures img').naturalWidth > 0")
+    assert "candidate 1" in image.get_attribute("alt")
+    tab.locator("#table tbody tr").nth(1).click()
+    tab.wait_for_function("document.querySelectorAll('#figures img').length === 0")
+    assert "--path 2" in tab.locator("#figured").text_content()
