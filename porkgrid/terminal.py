@@ -84,9 +84,10 @@ def number(value: float, unit: str) -> str:
     return f"{value:.{_DIGITS.get(unit, 3)}f}"
 
 
-def candidate_rows(table: pd.DataFrame, units: dict[str, str], names: Sequence[str]) -> list[list[str]]:
+def candidate_rows(
+    table: pd.DataFrame, units: dict[str, str], dates: Sequence[str], names: Sequence[str]
+) -> list[list[str]]:
     """Rank, dates and the named measures of each candidate."""
-    dates = [name for name in table.columns if name not in units and name != "rank"]
     return [
         [
             str(row["rank"]),

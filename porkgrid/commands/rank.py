@@ -96,12 +96,13 @@ def _trade(
 def _print_front(survey: Survey, table: Any, measures: tuple[str, ...], on_front: int, allowed: int) -> None:
     """Print the dates of a trade front with the measures traded first."""
     from porkgrid import terminal
+    from porkgrid.survey.candidates import stops_of
 
     units = {name: measure.unit for name, measure in survey.plan.measures.items()}
-    dates = [name for name in table.columns if name not in units and name != "rank"]
+    dates = stops_of(survey.plan)
     others = [name for name in _SHOWN if name in units and name not in measures]
     headings = ["#", *dates, *(f"{name} *" for name in measures), *others, ""]
-    rows = [[*row, ""] for row in terminal.candidate_rows(table, units, [*measures, *others])]
+    rows = [[*row, ""] for row in terminal.candidate_rows(table, units, dates, [*measures, *others])]
     columns = terminal.fitting(headings, rows, terminal.output().width)[:-1]
     shown = f"; {len(table)} of them, evenly spread" if len(table) < on_front else ""
     title = (
@@ -114,6 +115,7 @@ def _print_front(survey: Survey, table: Any, measures: tuple[str, ...], on_front
 def print_candidates(survey: Survey, table: Any, by: str, as_json: bool) -> None:
     """Print a table of candidates as wide as the terminal allows, or whole as JSON."""
     from porkgrid import terminal
+    from porkgrid.survey.candidates import stops_of
 
     if as_json:
         terminal.print_json(table.to_dict("records"))
@@ -126,11 +128,12 @@ def print_candidates(survey: Survey, table: Any, by: str, as_json: bool) -> None
         for name in measures
         if name.startswith("flyby") and name.endswith(_SHOWN_PER_FLYBY) and name != by
     ]
-    units = {name: measure.unit for name, measure in measures.items()}
-    dates = [name for name in table.columns if name not in measures and name != "rank"]
-    headings = ["#", *dates, *names, f"{by} *"]
-    rows = terminal.candidate_rows(table, units, [*names, by])
-    columns = terminal.fitting(headings, rows, terminal.output().width)
+    names = [f"refined_{by}", *names] if f"refined_{by}" in table else names
+    units = {name: measure.unit for name, measure in measures.items()} | {f"refined_{by}": measures[by].unit}
+    dates = stops_of(survey.plan)
+    headings = ["#", *dates, f"{by} *", *names, ""]
+    rows = [[*row, ""] for row in terminal.candidate_rows(table, units, dates, [by, *names])]
+    columns = terminal.fitting(headings, rows, terminal.output().width)[:-1]
     facts = survey.provenance
     title = (
         f"{facts['name']}: {facts['route']}\n"

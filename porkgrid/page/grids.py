@@ -12,7 +12,7 @@ import numpy as np
 from porkgrid.page.blocks import Blocks
 from porkgrid.page.opened import Opened
 from porkgrid.page.pack import packed_grid
-from porkgrid.page.thin import Thinning, covered_by, thinned, thinned_dates
+from porkgrid.page.thin import Thinning, swept_part, thinned, thinned_dates
 from porkgrid.page.words import digits_of, plain_symbol
 from porkgrid.sky.epochs import iso_from_jd
 from porkgrid.survey.limits import REASONS
@@ -63,23 +63,21 @@ def described(measure: Measure) -> dict[str, Any]:
 def _jobs(opened: Opened, thinning: Thinning) -> dict[str, Callable[[], str]]:
     """What there is to read and pack, by variable; each call does one."""
     plan, grid = opened.survey.plan, opened.survey.grid
-    swept = None
-    if opened.missing:
-        swept = ~covered_by(opened.missing, thinning)
+    rows = slice(0, thinning.departures, thinning.departure_step)
+    columns = slice(0, thinning.arrivals, thinning.arrival_step)
 
-    def read(name: str, where_not_swept: Any) -> np.ndarray:
-        values = thinned(grid[name], thinning)
-        return values if swept is None else np.where(swept, values, where_not_swept)
+    def read(name: str, where_not_swept: float) -> np.ndarray:
+        if not opened.missing:
+            return thinned(grid[name], thinning)
+        return swept_part(grid[name], opened.swept, rows, columns, where_not_swept).T
 
     def epochs(n: int) -> str:
         return packed_grid(_places(read(f"flyby{n}_epoch_jd_tdb", np.nan), plan.tables[n].jd))
 
     def measure(name: str) -> str:
-        return packed_grid(read(name, np.float32(np.nan)))
+        return packed_grid(read(name, np.nan))
 
-    jobs: dict[str, Callable[[], str]] = {
-        BLOCKED_BY: lambda: packed_grid(read(BLOCKED_BY, np.uint32(NEVER_SWEPT)))
-    }
+    jobs: dict[str, Callable[[], str]] = {BLOCKED_BY: lambda: packed_grid(read(BLOCKED_BY, NEVER_SWEPT))}
     for n in range(1, plan.flybys + 1):
         jobs[f"flyby{n}_epoch_jd_tdb"] = lambda n=n: epochs(n)
     for name in plan.stored:

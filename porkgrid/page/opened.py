@@ -7,13 +7,18 @@ from dataclasses import dataclass
 from functools import cached_property
 from pathlib import Path
 
+import numpy as np
 import pandas as pd
 
 from porkgrid.errors import RequestError
-from porkgrid.survey.candidates import pick, tabulate
+from porkgrid.page.thin import swept_part
+from porkgrid.survey.candidates import picked_at, tabulate
 from porkgrid.survey.folder import COMPLETE, RUNNING, read_provenance
 from porkgrid.survey.ledger import read_ledger
+from porkgrid.survey.measures import BOTH, BY_DEPARTURE
 from porkgrid.survey.plan import Tile
+from porkgrid.survey.rank import distinct, local_bests
+from porkgrid.survey.store import BLOCKED_BY, NEVER_SWEPT
 from porkgrid.survey.surveys import Survey
 
 _NO_TOPIC = ("_epoch_jd_tdb", "_branch", "_revs")  # every survey has them; none is what one compares by
@@ -33,13 +38,17 @@ class Opened:
         return sum(tile.cells for tile in self.missing) / (rows * columns)
 
     @cached_property
+    def swept(self) -> tuple[Tile, ...]:
+        """The tiles that are on disk."""
+        gone = {tile.number for tile in self.missing}
+        return tuple(tile for tile in self.survey.plan.tiles if tile.number not in gone)
+
+    @cached_property
     def candidates(self) -> pd.DataFrame:
         """The survey's table of candidates; of one half swept, ranked now from what is there."""
         if self.survey.provenance["state"] == COMPLETE:
             return self.survey.candidates
-        plan, rank = self.survey.plan, self.survey.scenario.rank
-        picked = pick(self.survey.path, plan, plan.rank_by, plan.rank_sign, rank.keep, rank.apart_days)
-        return tabulate(plan, picked)
+        return _ranked_so_far(self)
 
 
 def open_for_page(paths: Sequence[Path]) -> list[Opened]:
@@ -73,6 +82,29 @@ def _open(path: Path) -> Opened:
             f"{path}: no tile of the sweep is finished yet; `porkgrid sweep` with the same scenario goes on"
         )
     return Opened(survey, tuple(tile for tile in survey.plan.tiles if tile.number not in done))
+
+
+def _ranked_so_far(opened: Opened) -> pd.DataFrame:
+    """Candidates of the tiles that are there, by the same rule as a finished sweep's."""
+    survey, plan, rank = opened.survey, opened.survey.plan, opened.survey.scenario.rank
+    departures, arrivals = plan.shape
+    by, blocked_by = survey.grid[plan.rank_by], survey.grid[BLOCKED_BY]
+    across = slice(0, arrivals, 1)
+
+    def read(band: slice) -> tuple[np.ndarray, np.ndarray]:
+        rows = slice(band.start, band.stop, 1)
+        blocked = swept_part(blocked_by, opened.swept, rows, across, NEVER_SWEPT)
+        if by.dims == BOTH:
+            return swept_part(by, opened.swept, rows, across, np.nan), blocked
+        one_date = by.values[rows, None] if by.dims == BY_DEPARTURE else by.values
+        return np.broadcast_to(one_date, blocked.shape), blocked
+
+    i, j, _ = local_bests(read, departures, plan.rank_sign)
+    if not i.size:
+        return tabulate(plan, [])
+    picked = picked_at(survey.path, plan, i, j)
+    epochs = np.array([one.epochs for one in picked])
+    return tabulate(plan, [picked[row] for row in distinct(epochs, rank.apart_days, rank.keep)])
 
 
 def _must_share(opened: Sequence[Opened]) -> None:

@@ -63,12 +63,39 @@ def thinned_dates(values: np.ndarray, step: int) -> np.ndarray:
     return np.asarray(values)[::step]
 
 
-def covered_by(tiles: Iterable[Tile], thinning: Thinning) -> np.ndarray:
-    """(arrivals, departures) bool: the kept cells that lie in one of the tiles."""
-    whole = np.zeros((thinning.departures, thinning.arrivals), dtype=bool)
+def swept_part(
+    variable: xr.DataArray, tiles: Iterable[Tile], rows: slice, columns: slice, fill: float
+) -> np.ndarray:
+    """Rows and columns of a stored variable of both dates, read from these tiles only; `fill` elsewhere.
+
+    rows, columns: slices with start, stop and step. Returns (departures, arrivals) of the variable's type.
+    """
+    shape = (
+        len(range(rows.start, rows.stop, rows.step)),
+        len(range(columns.start, columns.stop, columns.step)),
+    )
+    part = np.full(shape, fill, dtype=variable.dtype)
     for tile in tiles:
-        whole[tile.rows, tile.columns] = True
-    return whole[:: thinning.departure_step, :: thinning.arrival_step].T
+        i, j = _inside(rows, tile.rows), _inside(columns, tile.columns)
+        read = variable.isel(departure=_taken(rows, i), arrival=_taken(columns, j))
+        if read.size:
+            part[i, j] = read.transpose("departure", "arrival").values
+    return part
+
+
+def _inside(taken: slice, block: slice) -> slice:
+    """Which of the numbers that a slice takes lie in a block, as places among those taken."""
+    first, end = (
+        -(-(max(edge, taken.start) - taken.start) // taken.step) for edge in (block.start, block.stop)
+    )
+    count = len(range(taken.start, taken.stop, taken.step))
+    return slice(min(first, count), min(end, count))
+
+
+def _taken(taken: slice, places: slice) -> slice:
+    """The numbers at these places of a slice."""
+    numbers = range(taken.start, taken.stop, taken.step)[places]
+    return slice(numbers.start, numbers.stop, numbers.step)
 
 
 def _every(step: int, side: str) -> str:

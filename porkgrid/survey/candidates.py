@@ -2,8 +2,11 @@
 
 from __future__ import annotations
 
+from collections import defaultdict
+from collections.abc import Sequence
 from dataclasses import dataclass
 from pathlib import Path
+from typing import Any
 
 import numpy as np
 import pandas as pd
@@ -20,6 +23,8 @@ from porkgrid.survey.routes import cells_at
 from porkgrid.survey.store import BLOCKED_BY
 from porkgrid.survey.surveys import Survey
 from porkgrid.survey.view import better_sign
+
+_BLOCK = 64  # routes that are flown together
 
 
 @dataclass(frozen=True)
@@ -56,24 +61,56 @@ def epoch_names(plan: Plan) -> list[str]:
     return [f"{stop}_epoch_jd_tdb" for stop in stops]
 
 
+def stops_of(plan: Plan) -> list[str]:
+    """The columns that hold the ISO dates of a route's encounters, in flying order."""
+    return [name.removesuffix("_epoch_jd_tdb") for name in epoch_names(plan)]
+
+
 def tabulate(plan: Plan, picked: list[Picked]) -> pd.DataFrame:
     """Table of candidates: rank, ISO dates of all encounters, then every measure of the route."""
-    stops = [name.removesuffix("_epoch_jd_tdb") for name in epoch_names(plan)]
-    rows = []
-    for number, one in enumerate(picked, start=1):
-        dates = dict(zip(stops, map(iso_from_jd, one.epochs), strict=True))
-        rows.append({"rank": number} | dates | measures_at(plan, one))
-    return pd.DataFrame(rows, columns=["rank", *stops, *plan.measures])
+    stops = stops_of(plan)
+    table: dict[str, Any] = {"rank": range(1, len(picked) + 1)}
+    for number, stop in enumerate(stops):
+        table[stop] = [iso_from_jd(one.epochs[number]) for one in picked]
+    return pd.DataFrame(table | measures_of(plan, picked), columns=["rank", *stops, *plan.measures])
 
 
 def measures_at(plan: Plan, one: Picked) -> dict[str, float]:
     """Every measure of a route flown at epochs that need not be on the grid."""
+    return {name: float(values[0]) for name, values in measures_of(plan, [one]).items()}
+
+
+def measures_of(plan: Plan, picked: Sequence[Picked]) -> dict[str, np.ndarray]:
+    """Every measure, (k,), of k routes flown at epochs that need not be on the grid."""
+    found = {name: np.full(len(picked), np.nan) for name in plan.measures}
+    together: dict[tuple[LegOption, ...], list[int]] = defaultdict(list)
+    for number, one in enumerate(picked):
+        together[one.options].append(number)
+    for options, numbers in together.items():
+        for start in range(0, len(numbers), _BLOCK):
+            block = numbers[start : start + _BLOCK]
+            for name, values in _flown(plan, options, [picked[number].epochs for number in block]).items():
+                found[name][block] = values
+    return found
+
+
+def _flown(
+    plan: Plan, options: tuple[LegOption, ...], epochs: list[tuple[float, ...]]
+) -> dict[str, np.ndarray]:
+    """Measures of k routes with the same leg options: the diagonal of the k × k grid of their dates.
+
+    For a few dozen routes that is far less work than k grids of one cell each.
+    """
     tables = [
-        state_table(plan.ephemeris, table.body, np.array([jd]))
-        for table, jd in zip(plan.tables, one.epochs, strict=True)
+        state_table(plan.ephemeris, table.body, np.array(dates))
+        for table, dates in zip(plan.tables, zip(*epochs, strict=True), strict=True)
     ]
-    cells = cells_at(plan, tables, list(one.options))
-    return {name: float(np.ravel(measure.compute(cells))[0]) for name, measure in plan.measures.items()}
+    cells, k = cells_at(plan, tables, list(options)), len(epochs)
+    with np.errstate(invalid="ignore", over="ignore"):  # off the diagonal anything may be
+        return {
+            name: np.diagonal(np.broadcast_to(measure.compute(cells), (k, k)))
+            for name, measure in plan.measures.items()
+        }
 
 
 def _cells_of_candidates(

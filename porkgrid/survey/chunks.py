@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import os
 from contextlib import suppress
+from pathlib import Path
 from typing import Literal
 
 import google_crc32c
@@ -53,6 +54,12 @@ def write_chunk(array: str, place: tuple[int, int], content: bytes) -> None:
         with suppress(OSError):
             os.unlink(part)
         raise
+
+
+def remove_parts(store: Path) -> None:
+    """Remove what writers that were killed have left half-written."""
+    for part in store.glob("*/c/*/.*.part"):
+        part.unlink(missing_ok=True)
 
 
 def is_whole(array: str, place: tuple[int, int]) -> bool:

@@ -18,14 +18,22 @@ from porkgrid.survey.logbook import LOG
 from porkgrid.survey.store import STORE
 
 SCENARIO, PROVENANCE, CANDIDATES, FIGURES = "scenario.toml", "survey.json", "candidates.csv", "figures"
+REFINED = "refined.csv"
 # What is ours in a folder, as patterns, besides survey.json, which says that they are.
-OURS = (SCENARIO, CANDIDATES, FIGURES, STORE, LEDGER, "period-*.csv", "slip.csv", "trade.csv", "page.html",
-        "handoff")  # fmt: skip
+OURS = (SCENARIO, CANDIDATES, REFINED, FIGURES, STORE, LEDGER, "period-*.csv", "slip.csv", "trade.csv",
+        "page.html", "handoff")  # fmt: skip
 PART = ".part"  # ending of a file that is being written
 FORMAT = 2  # of the folder: raised when what is in it cannot be read as before
 
 # States of a survey: its folder is taken, its store is there, all is written.
 CLAIMED, RUNNING, COMPLETE = "claimed", "running", "complete"
+# What survey.json holds besides from each state on, as far as something is made of it.
+_FACTS: dict[str, dict[str, type]] = {
+    CLAIMED: {"name": str, "fingerprint": str, "asked": dict, "started": str},
+    RUNNING: {"route": str, "scenario_folder": str, "versions": dict, "tiles": dict, "grid": dict},
+    COMPLETE: {"cells": int, "cells_allowed": int, "cells_forbidden_by": dict,
+               "cells_forbidden_by_it_alone": dict},
+}  # fmt: skip
 
 
 def folder_of(scenario: Scenario, out: str | Path | None) -> Path:
@@ -48,25 +56,52 @@ def read_provenance(folder: Path) -> dict[str, Any]:
     """The survey.json of a folder. RequestError where the folder is no survey, or one of another version."""
     provenance = _survey_json(folder)
     if provenance.get("format") != FORMAT:
-        made_by = provenance.get("versions", {}).get("porkgrid", "an older version")
+        versions = provenance.get("versions")
+        versions = versions if isinstance(versions, dict) else {}
+        made_by = versions.get("porkgrid", "of another version")
         raise RequestError(
             f"{folder}: was made by porkgrid {made_by} in folder format {provenance.get('format', 1)}, and "
             f"this one reads format {FORMAT}; sweep its scenario anew with --fresh"
         )
+    if lacking := _lacking(provenance):
+        raise RequestError(
+            f"{folder / PROVENANCE}: {', '.join(lacking)} missing, or not what a sweep writes there; "
+            "sweep the survey's scenario anew with --fresh"
+        )
     return provenance
+
+
+def _lacking(provenance: dict[str, Any]) -> list[str]:
+    """Names of the facts that a survey in its state must have and has not, or not of the right kind."""
+    states = list(_FACTS)
+    if provenance["state"] not in states:
+        return ["state"]
+    wanted: dict[str, type] = {}
+    for state in states[: states.index(provenance["state"]) + 1]:
+        wanted |= _FACTS[state]
+    inner = {"tiles": ("tile_cells", "tile_columns"), "grid": ("departure_dates", "arrival_dates")}
+    return [name for name, kind in wanted.items() if not isinstance(provenance.get(name), kind)] or [
+        f"{name}.{key}"
+        for name in inner.keys() & wanted.keys()
+        for key in inner[name]
+        if not (isinstance(provenance[name].get(key), int) and provenance[name][key] > 0)
+    ]
 
 
 def _survey_json(folder: Path) -> dict[str, Any]:
     """The survey.json of a folder, of whatever version. RequestError where it is none of ours."""
     path = folder / PROVENANCE
     try:
-        provenance = json.loads(path.read_text())
+        provenance = json.loads(path.read_text(encoding="utf-8"))
     except FileNotFoundError:
         raise RequestError(
             f"{folder}: not a survey folder: it has no {PROVENANCE}; `porkgrid sweep` makes one"
         ) from None
-    except (ValueError, OSError) as error:
-        raise RequestError(f"{path}: cannot be read as a survey's provenance: {error}") from None
+    except (ValueError, OSError, RecursionError) as error:
+        raise RequestError(
+            f"{path}: cannot be read as a survey's provenance: {error}; "
+            "sweep its scenario into another folder"
+        ) from None
     if not isinstance(provenance, dict) or not {"fingerprint", "state"} <= provenance.keys():
         raise RequestError(f"{path}: not the provenance of a porkgrid survey: no fingerprint, no state")
     return provenance
@@ -88,13 +123,21 @@ def write_whole(path: Path, text: str) -> None:
 
 
 def refuse_foreign(folder: Path) -> None:
-    """RequestError where the folder holds something else than a survey."""
+    """RequestError where the folder holds something else than a survey, or links that lead out of it."""
     if folder.exists() and not folder.is_dir():
         raise RequestError(f"{folder}: is a file; give a folder with --out")
+    if folder.is_symlink() and not folder.exists():
+        raise RequestError(f"{folder}: is a link to nowhere; give a folder with --out")
     held = sorted(each.name for each in folder.iterdir()) if folder.exists() else []
     foreign = [name for name in held if name not in (PROVENANCE + PART, LOCK, LOG)]
     if foreign and PROVENANCE not in held:
         raise RequestError(f"{folder}: holds other files ({foreign[0]}, …); give another folder with --out")
+    for name in (PROVENANCE, LOCK, LOG, *OURS):
+        if (folder / name).is_symlink():
+            raise RequestError(
+                f"{folder / name}: is a link, and a sweep writes nowhere but in its own folder; "
+                "replace it by what it points to, or give another folder with --out"
+            )
 
 
 def claim(folder: Path, scenario: Scenario, fresh: bool) -> bool:

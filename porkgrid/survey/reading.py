@@ -63,7 +63,6 @@ class _SoundStore(LocalStore):
         if found is None:
             raise RequestError(f"{self.root / key}: this part of the survey's grid is missing; {remedy}")
         if _TILE.search(key) and not is_sound(found.to_bytes()):
-            raise RequestError(
-                f"{self.root / key}: this part of the survey's grid is damaged: its checksum is wrong; {remedy}"
-            )
+            what = "this part of the survey's grid is damaged: its checksum is wrong"
+            raise RequestError(f"{self.root / key}: {what}; {remedy}")
         return found

@@ -65,7 +65,7 @@ def conjunctions(seen: Sightlines, below_rad: float) -> list[Conjunction]:
     inside = seen.angle_rad < below_rad  # False where it is NaN
     edges = np.flatnonzero(np.diff(np.concatenate(([False], inside, [False])).astype(int)))
     found = []
-    for start, end in list(pairwise(edges))[::2]:
+    for start, end in list(pairwise(edges.tolist()))[::2]:
         least = start + int(np.argmin(seen.angle_rad[start:end]))
         found.append(
             Conjunction(

@@ -12,7 +12,15 @@ import xarray as xr
 from porkgrid.errors import RequestError
 from porkgrid.scenario import Scenario
 from porkgrid.survey.admit import load_scenario
-from porkgrid.survey.folder import CANDIDATES, COMPLETE, SCENARIO, differences, fingerprint, read_provenance
+from porkgrid.survey.folder import (
+    CANDIDATES,
+    COMPLETE,
+    REFINED,
+    SCENARIO,
+    differences,
+    fingerprint,
+    read_provenance,
+)
 from porkgrid.survey.plan import Plan, make_plan
 from porkgrid.survey.reading import open_grid
 from porkgrid.survey.store import BLOCKED_BY, STORE
@@ -54,6 +62,11 @@ class Survey:
         if "rank" not in table:
             raise RequestError(f"{path}: has no column rank; {_RANK_AGAIN}")
         return table
+
+    @cached_property
+    def refined(self) -> pd.DataFrame:
+        """The candidates with their dates let off the grid: rank, ISO dates and times, then measures."""
+        return pd.read_csv(self.path / REFINED)
 
     @cached_property
     def scenario(self) -> Scenario:

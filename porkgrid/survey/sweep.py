@@ -20,6 +20,7 @@ from porkgrid.sky.kernel import sha256_of
 from porkgrid.survey import folder as folders
 from porkgrid.survey.budget import within, workers_of
 from porkgrid.survey.candidates import pick, tabulate
+from porkgrid.survey.chunks import remove_parts
 from porkgrid.survey.cluster import connected, on_cluster
 from porkgrid.survey.ledger import Ledger, added, read_ledger, totals
 from porkgrid.survey.lock import held
@@ -27,7 +28,9 @@ from porkgrid.survey.logbook import log, logged
 from porkgrid.survey.plan import Plan, Tile, make_plan
 from porkgrid.survey.pool import in_threads
 from porkgrid.survey.progress import Pace, Progress
-from porkgrid.survey.store import CAUTION, create_store, write_tile
+from porkgrid.survey.refine import refine, refined_table
+from porkgrid.survey.refinedtable import with_refined
+from porkgrid.survey.store import CAUTION, STORE, create_store, write_tile
 from porkgrid.survey.surveys import Survey, open_survey
 from porkgrid.survey.tiles import TileSums, compute_tile
 from porkgrid.survey.verify import damaged_tiles
@@ -70,14 +73,14 @@ def sweep(
         provenance = folders.read_provenance(folder) if begun else _begin(folder, plan)
         plan = replace(plan, **provenance["tiles"])
         missing = _missing(folder, plan)
-        if missing:
-            if begun:
-                _same_makers(folder, plan, provenance)
-            with ThreadPoolExecutor(1) as aside:
-                # reads the whole kernel: the tiles need not wait
-                noted = aside.submit(_note_kernels, folder, plan, provenance)
+        if missing and begun:
+            _same_makers(folder, plan, provenance)
+        with ThreadPoolExecutor(1) as aside:
+            # reads the whole kernel: the tiles need not wait
+            noted = aside.submit(_note_kernels, folder, plan, provenance)
+            if missing:
                 _fill(folder, plan, missing, threads, cluster, report)
-                noted.result()
+            noted.result()
         _finish(folder, plan, provenance)
     return open_survey(folder)
 
@@ -90,9 +93,16 @@ def _note_kernels(folder: Path, plan: Plan, provenance: dict[str, Any]) -> None:
 
 
 def _kernels(plan: Plan) -> list[dict[str, str]]:
-    return [
-        {"name": name, "file": path.name, "sha256": sha256_of(path)} for name, path in plan.ephemeris.files
-    ]
+    try:
+        return [
+            {"name": name, "file": path.name, "sha256": sha256_of(path)}
+            for name, path in plan.ephemeris.files
+        ]
+    except OSError as error:
+        raise RunError(
+            f"{error.filename}: the kernel was there when the sweep began, and now: {error.strerror}; put it "
+            "back and give the same command again: the tiles already written are kept"
+        ) from error
 
 
 def _same_makers(folder: Path, plan: Plan, provenance: dict[str, Any]) -> None:
@@ -172,6 +182,8 @@ def _fill(
             progress = pace.progress(done, so_far)
             if report:
                 report(progress)
+    if len(there) > 0 or cluster is not None:
+        remove_parts(folder / STORE)
 
 
 def _on_threads(
@@ -192,8 +204,11 @@ def _on_threads(
 def _finish(folder: Path, plan: Plan, provenance: dict[str, Any]) -> None:
     """Rank, and write the totals: the survey is complete when this returns."""
     rank = plan.scenario.rank
-    table = tabulate(plan, pick(folder, plan, plan.rank_by, plan.rank_sign, rank.keep, rank.apart_days))
-    folders.write_whole(folder / folders.CANDIDATES, table.to_csv(index=False, float_format="%.13g"))
+    picked = pick(folder, plan, plan.rank_by, plan.rank_sign, rank.keep, rank.apart_days)
+    refined = refine(plan, picked)
+    table = with_refined(plan, tabulate(plan, picked), refined)
+    for name, rows in ((folders.CANDIDATES, table), (folders.REFINED, refined_table(plan, refined))):
+        folders.write_whole(folder / name, rows.to_csv(index=False, float_format="%.13g"))
     sums = totals(read_ledger(folder).values(), plan.rank_sign)
     if provenance["state"] == folders.COMPLETE:
         return

@@ -9,13 +9,15 @@ from pathlib import Path
 from typing import Any
 
 import pytest
+from review_scenarios import STARLING
 from survey_scenarios import ROOK, shrink_tiles, written
 
 from porkgrid.page.opened import Opened, open_for_page
 from porkgrid.page.review import write_review
 from porkgrid.survey.admit import load_scenario
+from porkgrid.survey.ledger import read_ledger
 from porkgrid.survey.surveys import Survey
-from porkgrid.survey.sweep import sweep
+from porkgrid.survey.sweep import Progress, sweep
 
 # Quiet, without what needs a graphics card or asks the network
 CHROMIUM_ARGUMENTS = [
@@ -48,13 +50,16 @@ def rook(swept) -> Survey:
 
 
 @pytest.fixture(scope="session")
+def starling(swept) -> Survey:
+    return swept(STARLING, "starling")
+
+
+@pytest.fixture(scope="session")
 def half_rook(tmp_path_factory) -> Iterator[tuple[Path, int]]:
     """ROOK with its sweep broken off, and how many of its tiles are done."""
     place = tmp_path_factory.mktemp("half")
-    done: list[int] = []
 
-    def break_off(progress: Any) -> None:
-        done.append(progress.tiles_done)
+    def break_off(progress: Progress) -> None:
         if progress.tiles_done >= 5:
             raise KeyboardInterrupt
 
@@ -62,8 +67,6 @@ def half_rook(tmp_path_factory) -> Iterator[tuple[Path, int]]:
         shrink_tiles(patch)
         with pytest.raises(KeyboardInterrupt):
             sweep(load_scenario(written(place, ROOK)), place / "rook", workers=1, report=break_off)
-        from porkgrid.survey.ledger import read_ledger
-
         yield place / "rook", len(read_ledger(place / "rook"))
 
 

@@ -6,10 +6,13 @@ from pathlib import Path
 
 import numpy as np
 import pytest
-from review_scenarios import CUCKOO, HOSTILE, STARLING
+from review_scenarios import CUCKOO, HOSTILE
 from review_tab import drawn, place_of, point_at, readings, rows, set_limit, settled
+from survey_scenarios import ROOK
 
+from porkgrid.figures.draw import draw_path_of
 from porkgrid.survey.candidates import epoch_names
+from porkgrid.survey.ledger import read_ledger
 from porkgrid.survey.rank import distinct, local_bests
 
 pytestmark = pytest.mark.browser
@@ -111,11 +114,13 @@ def test_candidates_of_the_sweep_are_listed_as_they_were_ranked(tab, rook):
     assert [row["cells"]["stop-0"] for row in listed] == list(exact["departure"])
 
 
-@pytest.mark.parametrize("most", [14.0, 40.0], ids=["tighter", "looser"])
-def test_moving_a_limit_ranks_anew(tab, rook, most):
+@pytest.mark.parametrize(("name", "most"), [("rook", 14.0), ("starling", 25.0)], ids=["tighter", "looser"])
+def test_moving_a_limit_ranks_anew(visit, page_of, request, name, most):
+    survey = request.getfixturevalue(name)
+    tab = visit(page_of(survey.path))
     set_limit(tab, "c3_km2_s2", "most", most)
     listed = rows(tab)
-    exact = rook.candidates
+    exact = survey.candidates
     still = [f"exact-{row['rank']}" for _, row in exact.iterrows() if row["c3_km2_s2"] <= most]
     assert [row["key"] for row in listed if row["key"].startswith("exact")] == still
     dates = {(row["cells"]["stop-0"], row["cells"]["stop-1"]) for row in listed}
@@ -124,7 +129,7 @@ def test_moving_a_limit_ranks_anew(tab, rook, most):
         for row in listed
         if not row["key"].startswith("exact")
     }
-    wanted = best_dates(rook, moved_c3(rook, most))
+    wanted = best_dates(survey, moved_c3(survey, most))
     assert of_page  # the limit has moved enough for new bests
     assert of_page <= wanted <= dates
     values = [float(row["cells"]["dv_total_km_s"]) for row in listed]
@@ -255,8 +260,7 @@ def test_a_hostile_name_stays_text(visit, swept, page_of):
     assert tab.locator("img").count() == 0
 
 
-def test_several_surveys_share_a_page(visit, rook, swept, page_of):
-    starling = swept(STARLING, "starling")
+def test_several_surveys_share_a_page(visit, rook, starling, page_of):
     tab = visit(page_of(rook.path, starling.path))
     tab.locator("#measure").select_option("c3_km2_s2")
     tab.locator("#survey").select_option("1")
@@ -281,16 +285,10 @@ def test_a_survey_half_swept_says_what_is_missing_and_shows_the_rest(visit, half
 
 
 def done_cells(folder: Path) -> int:
-    from porkgrid.survey.ledger import read_ledger
-
     return sum(sums.cells for sums in read_ledger(folder).values())
 
 
 def test_figures_of_the_chosen_candidate_are_shown(visit, swept, page_of):
-    from survey_scenarios import ROOK
-
-    from porkgrid.figures.draw import draw_path_of
-
     survey = swept(ROOK, "drawn")
     draw_path_of(survey, 1, ["svg"])
     tab = visit(page_of(survey.path))

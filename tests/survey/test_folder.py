@@ -20,6 +20,11 @@ from porkgrid.survey.folder import (
 )
 from porkgrid.survey.lock import held
 
+SWEPT = {
+    "route": "Earth → Mars", "scenario_folder": "/", "versions": {"porkgrid": "0"},
+    "tiles": {"tile_cells": 256, "tile_columns": 32}, "grid": {"departure_dates": 43, "arrival_dates": 59},
+    "cells": 2537, "cells_allowed": 1, "cells_forbidden_by": {}, "cells_forbidden_by_it_alone": {},
+}  # fmt: skip
 STARTS = {"scenario.toml", "survey.json", "figures", "sweep.lock"}
 
 
@@ -52,7 +57,7 @@ def listing(folder):
 def begin(folder, scenario, state=folders.RUNNING):
     """Claim a folder, as far as a sweep whose store has been made."""
     take(folder, scenario, fresh=False)
-    write_provenance(folder, read_provenance(folder) | {"state": state})
+    write_provenance(folder, read_provenance(folder) | SWEPT | {"state": state})
     (folder / "grid.zarr").mkdir()
 
 
@@ -213,6 +218,84 @@ def test_what_is_no_provenance_is_said_to_be_none(tmp_path, content):
     (tmp_path / "survey.json").write_bytes(content)
     with pytest.raises(RequestError, match=r"survey\.json: "):
         read_provenance(tmp_path)
+
+
+HELD = {
+    "name": "x",
+    "fingerprint": "0",
+    "asked": {},
+    "started": "2028-01-01",
+    "format": folders.FORMAT,
+} | SWEPT
+CHANGES = {
+    "state": "finished", "name": None, "asked": [], "route": 3, "scenario_folder": None, "versions": "0",
+    "tiles": {"tile_cells": 0, "tile_columns": 32}, "grid": {"departure_dates": 43}, "cells": "2537",
+    "cells_forbidden_by": None,
+}  # fmt: skip
+
+
+@pytest.mark.parametrize("key", CHANGES)
+def test_a_fact_that_is_missing_or_of_another_kind_is_named(tmp_path, key):
+    right = HELD | {"state": folders.COMPLETE}
+    write_provenance(tmp_path, right)
+    assert read_provenance(tmp_path) == right
+    for wrong in (right | {key: CHANGES[key]}, {name: each for name, each in right.items() if name != key}):
+        write_provenance(tmp_path, wrong)
+        with pytest.raises(RequestError, match=rf"survey\.json: .*{key}"):
+            read_provenance(tmp_path)
+
+
+def test_facts_of_later_states_are_not_asked_of_a_survey_that_has_just_begun(tmp_path):
+    begun = {key: each for key, each in HELD.items() if key not in SWEPT} | {"state": folders.CLAIMED}
+    write_provenance(tmp_path, begun)
+    assert read_provenance(tmp_path) == begun
+
+
+@pytest.mark.parametrize("made_by", [{"format": 1, "versions": {"porkgrid": "0.0.7"}}, {}, {"format": 3}])
+def test_a_survey_of_another_format_is_refused_and_both_are_named(tmp_path, made_by):
+    write_provenance(tmp_path, {"fingerprint": "0", "state": "complete"} | made_by)
+    wanted = f"porkgrid {made_by.get('versions', {}).get('porkgrid', 'of another version')} in folder format "
+    with pytest.raises(RequestError) as caught:
+        read_provenance(tmp_path)
+    assert wanted + str(made_by.get("format", 1)) in str(caught.value)
+    assert f"reads format {folders.FORMAT}" in str(caught.value)
+
+
+# Links that lead out of the folder
+
+
+@pytest.mark.parametrize("name", ["grid.zarr", "figures", "candidates.csv", "tiles.jsonl", "survey.json"])
+@pytest.mark.parametrize("fresh", [False, True])
+def test_a_link_in_the_folder_is_refused_and_what_it_leads_to_is_left(
+    folder, scenario, tmp_path, name, fresh
+):
+    begin(folder, scenario)
+    outside, inside = tmp_path / "outside", folder / name
+    if inside.exists():
+        inside.rename(outside)
+    else:
+        outside.write_text("mine")
+    inside.symlink_to(outside)
+    before = sorted(tmp_path.rglob("*"))
+    with pytest.raises(RequestError, match=rf"survey/{name}: is a link"):
+        take(folder, scenario, fresh)
+    assert sorted(tmp_path.rglob("*")) == before
+
+
+def test_a_folder_that_is_itself_a_link_is_a_folder_all_the_same(tmp_path, scenario):
+    (tmp_path / "disk").mkdir()
+    (tmp_path / "link").symlink_to(tmp_path / "disk")
+    take(tmp_path / "link", scenario, fresh=False)
+    assert listing(tmp_path / "disk") == STARTS
+
+
+def test_a_link_to_nowhere_is_no_folder(tmp_path, scenario):
+    (tmp_path / "link").symlink_to(tmp_path / "away")
+    with pytest.raises(RequestError, match="link: is a link to nowhere"):
+        take(tmp_path / "link", scenario, fresh=False)
+
+
+# What survey.json says
 
 
 def test_a_folder_without_provenance_is_no_survey(tmp_path):

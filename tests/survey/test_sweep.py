@@ -10,8 +10,9 @@ import xarray as xr
 from survey_scenarios import LEAN, LOOPS, ROOK, changed, limited, shrink_tiles
 
 from porkgrid import RunError
+from porkgrid.survey import store as chunks_written
 from porkgrid.survey import sweep as engine
-from porkgrid.survey.ledger import read_ledger
+from porkgrid.survey.ledger import Ledger, read_ledger
 from porkgrid.survey.surveys import open_survey
 from porkgrid.survey.sweep import sweep
 
@@ -45,7 +46,10 @@ def assert_same_survey(one, other):
 
 def test_a_sweep_leaves_the_folder_of_the_design(survey):
     names = {path.name for path in survey.path.iterdir()}
-    assert names == {"scenario.toml", "survey.json", "grid.zarr", "candidates.csv", "figures", "tiles.jsonl"}
+    assert names == {
+        "scenario.toml", "survey.json", "grid.zarr", "candidates.csv", "figures", "tiles.jsonl", "sweep.log",
+        "sweep.lock",
+    }  # fmt: skip
     assert (survey.path / "scenario.toml").read_text() == ROOK
 
 
@@ -191,12 +195,22 @@ def test_what_the_file_system_refuses_is_said_with_the_folder(scenario, tmp_path
     assert str(caught.value).startswith(f"{tmp_path / 'survey'}: ")
 
 
-@pytest.mark.parametrize(("stage", "at"), [("create_store", 1), ("write_tile", 4), ("enter", 4), ("pick", 1)])
+@pytest.mark.parametrize(
+    ("owner", "stage", "at"),
+    [
+        (engine, "create_store", 1),
+        (engine, "write_tile", 4),
+        (chunks_written, "write_chunk", 9),
+        (Ledger, "enter", 4),
+        (Ledger, "_append", 1),
+        (engine, "pick", 1),
+    ],
+)
 def test_a_full_disk_at_any_stage_leaves_no_half_survey_and_the_sweep_goes_on_later(
-    scenario, whole, tmp_path, monkeypatch, stage, at
+    scenario, whole, tmp_path, monkeypatch, owner, stage, at
 ):
     with monkeypatch.context() as patch:
-        patch.setattr(engine, stage, refusing(getattr(engine, stage), errno.ENOSPC, at))
+        patch.setattr(owner, stage, refusing(getattr(owner, stage), errno.ENOSPC, at))
         with pytest.raises(RunError):
             sweep(scenario, tmp_path, 2)
     assert json.loads((tmp_path / "survey.json").read_text())["state"] != "complete"

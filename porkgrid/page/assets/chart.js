@@ -2,6 +2,7 @@
 
 const STATES = 0, VALUES = 1, BESTS = 2, EXACT = 3, CHOSEN = 4; // traces, from below
 const CLICK_REACH_PX = 14;
+const NARROW_PX = 560; // of a chart that has its colour key above it
 const MODE_BAR = {
   displaylogo: false,
   responsive: true,
@@ -30,23 +31,28 @@ function rowsOf(flat, columns) {
 function shownValues(model, by) {
   const values = valuesOf(model, by);
   const masked = new Float32Array(model.cells).fill(NaN);
-  const sample = [];
-  const stride = Math.max(1, Math.floor(model.cells / 40000));
   let least = Infinity, most = -Infinity;
   for (let cell = 0; cell < masked.length; cell++) {
     if (model.states[cell] !== ALLOWED) continue;
     const value = (masked[cell] = values[cell]);
     if (value < least) least = value;
     if (value > most) most = value;
-    if (cell % stride === 0 && value === value) sample.push(value);
   }
-  return { masked, ...colourRange(model, by, sample, least, most) };
+  return { masked, ...colourRange(model, by, sampled(masked, 40000).sort(), least, most) };
+}
+
+/** About so many of the finite values, evenly taken; typed, so that sorting is by number. */
+function sampled(values, count) {
+  const stride = Math.max(1, Math.floor(values.length / count));
+  const taken = new Float64Array(Math.ceil(values.length / stride));
+  let size = 0;
+  for (let at = 0; at < values.length; at += stride) if (Number.isFinite(values[at])) taken[size++] = values[at];
+  return taken.subarray(0, size);
 }
 
 /** From the best value to where one in twenty is worse, so that a few bad cells do not take the colours. */
 function colourRange(model, by, sample, least, most) {
   if (least > most) return { low: 0, high: 1 };
-  sample.sort((a, b) => a - b);
   const tail = Math.floor(sample.length / 20);
   if (betterSign(model.survey, by) > 0) most = sample[sample.length - 1 - tail] ?? most;
   else least = sample[tail] ?? least;
@@ -61,13 +67,8 @@ function groundOf(model, by) {
   const values = valuesOf(model, by);
   const ground = new Float32Array(model.cells);
   const sign = betterSign(model.survey, by);
-  const sample = [];
-  const stride = Math.max(1, Math.floor(model.cells / 20000));
-  for (let cell = 0; cell < model.cells; cell += stride) {
-    if (model.states[cell] <= FORBIDDEN && Number.isFinite(values[cell])) sample.push(sign * values[cell]);
-  }
-  sample.sort((a, b) => a - b);
-  const best = sample[0] ?? 0, spread = (sample[Math.floor(sample.length * 0.7)] ?? 1) - best || 1;
+  const costs = sampled(values, 20000).map((value) => sign * value).sort();
+  const best = costs[0] ?? 0, spread = (costs[Math.floor(costs.length * 0.7)] ?? 1) - best || 1;
   for (let cell = 0; cell < model.cells; cell++) {
     const worse = (sign * values[cell] - best) / spread;
     const state = model.states[cell];
@@ -108,7 +109,7 @@ function tracesOf(model, by, entries, chosen) {
 /** The key of the colours: at the side, or above where the chart is narrow. */
 function colourBar() {
   const common = { thickness: 14, outlinewidth: 0, len: 1 };
-  if (byId("chart").clientWidth > 560) return common;
+  if (byId("chart").clientWidth > NARROW_PX) return common;
   return { ...common, thickness: 10, orientation: "h", x: 0.5, xanchor: "center", y: 1.02, yanchor: "bottom", nticks: 4 };
 }
 
@@ -129,13 +130,13 @@ function marks(entries, symbol, size, colour) {
 function layoutOf(model) {
   const axis = {
     type: "date", gridcolor: "rgba(128,128,128,.25)", zeroline: false, tickformat: "%Y-%m-%d",
-    tickfont: { size: 11 }, automargin: true, linecolor: css("--line"), showline: true, mirror: true,
+    tickfont: { size: 11 }, automargin: false, linecolor: css("--line"), showline: true, mirror: true,
   };
   const stops = model.survey.route.split(" → ");
   const wide = byId("chart").clientWidth;
   return {
     uirevision: model.survey.folder,
-    margin: { l: 10, r: 10, t: 34, b: 10 }, // above, room for the mode bar
+    margin: { l: 92, r: wide > NARROW_PX ? 96 : 14, t: wide > NARROW_PX ? 34 : 70, b: 52 }, // above, room for the mode bar
     paper_bgcolor: "rgba(0,0,0,0)", plot_bgcolor: css("--paper"),
     font: { family: css("--font"), size: 12, color: css("--ink") },
     xaxis: { ...axis, nticks: Math.max(2, Math.floor(wide / 130)), title: { text: `Departure from ${plain(stops[0])}`, standoff: 8 }, ...reach(model, "departure") },

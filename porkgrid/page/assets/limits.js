@@ -70,12 +70,7 @@ function endElement(measure, limit, end, low, high, changed) {
  */
 function reachOf(model, limit) {
   const values = valuesOf(model, limit.measure);
-  const stride = Math.max(1, Math.floor(values.length / 20000));
-  const sample = [];
-  for (let cell = 0; cell < values.length; cell += stride) {
-    if (Number.isFinite(values[cell])) sample.push(values[cell]);
-  }
-  sample.sort((a, b) => a - b);
+  const sample = sampled(values, 20000).sort();
   const at = (share) => sample[Math.floor(share * (sample.length - 1))] ?? 0;
   let low = at(0), high = at(0.98);
   const { least, most } = limit.swept ?? {};

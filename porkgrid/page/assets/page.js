@@ -22,12 +22,15 @@ async function showSurvey(number) {
   byId("measure").value = wanted;
   layReadings(model);
   layLimits(model, redrawSoon);
+  takeFirst(model);
   await redraw();
   requestAnimationFrame(() => performance.mark("first-chart"));
   document.documentElement.dataset.shown = String(number);
   await loadMeasures(model, survey.grid.measures.map((measure) => measure.name));
   layTableNow();
-  choose(now.entries[0] ?? null, false);
+  readCell(model, now.cell);
+  readChosen(model, now.chosen);
+  await showFigures(model, now.chosen);
   await showBeside(survey, DATA.comparisons);
   document.documentElement.dataset.ready = String(number);
 }
@@ -46,6 +49,13 @@ function tellAbout(survey) {
   byId("key-missing").hidden = missing === null;
   tell("searched", survey.grid.flybys.length === 0 ? "" :
     "Each cell holds the flyby dates that were best under the limits of the sweep. Limits moved here judge those dates; they do not search for others, and cells in which the sweep kept none stay forbidden.");
+}
+
+/** Begin with the best candidate. */
+function takeFirst(model) {
+  applyLimits(model);
+  now.chosen = ranked(model, now.by)[0] ?? null;
+  now.cell = now.chosen?.cell ?? null;
 }
 
 /** Draw everything that limits and measure decide. */

@@ -3,9 +3,17 @@
 /** The bytes of a block: base64 text of a zlib stream. */
 async function unpackedBytes(number) {
   const text = document.getElementById(`block-${number}`).textContent;
-  const packed = Uint8Array.from(atob(text), (sign) => sign.charCodeAt(0));
-  const stream = new Blob([packed]).stream().pipeThrough(new DecompressionStream("deflate"));
+  const stream = new Blob([bytesOfBase64(text)]).stream().pipeThrough(new DecompressionStream("deflate"));
   return new Uint8Array(await new Response(stream).arrayBuffer());
+}
+
+/** Base64 text as bytes; browsers from before 2025 have no call for it. */
+function bytesOfBase64(text) {
+  if (Uint8Array.fromBase64) return Uint8Array.fromBase64(text);
+  const signs = atob(text);
+  const bytes = new Uint8Array(signs.length);
+  for (let at = 0; at < signs.length; at++) bytes[at] = signs.charCodeAt(at);
+  return bytes;
 }
 
 /** A packed grid as a Uint32Array of bit patterns, row by row. */
