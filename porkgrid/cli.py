@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import io
 import sys
 
 import typer
@@ -32,6 +33,8 @@ _INTERRUPTED = 130  # exit code
 
 def main() -> None:
     """Run the command line; errors become one clear message and an exit code."""
+    if isinstance(sys.stdout, io.TextIOWrapper):
+        sys.stdout.reconfigure(errors="surrogateescape")  # the name of a file need not be text
     try:
         code = app(standalone_mode=False)
     except (RequestError, RunError) as error:

@@ -23,6 +23,7 @@ Floats = NDArray[np.float64]
 # How long a flight is told from the body, in times sqrt(r³/GM) of its periapsis, at which it is some hundred
 # radii out; and the most of a flight for that.
 _NEAR_TIMES, _NEAR_SHARE = 100.0, 0.25
+_NEAR_BARE_S = 3600.0  # from a body's centre, which does not pull: nothing is gained
 
 
 @dataclass(frozen=True, eq=False)
@@ -70,7 +71,6 @@ def body_state(forces: Forces, body: Body, t_s: float) -> Floats:
 def _switch_s(outset: Outset, until_s: float) -> float:
     whole = until_s - outset.t_s
     gm, radius = outset.body.gm_km3_s2, float(np.linalg.norm(outset.relative[:3]))
-    if gm is None or radius == 0.0:
-        return outset.t_s + _NEAR_SHARE * whole
-    near = _NEAR_TIMES * math.sqrt(radius**3 / gm)
+    bare = gm is None or radius == 0.0
+    near = _NEAR_BARE_S if bare else _NEAR_TIMES * math.sqrt(radius**3 / gm)
     return outset.t_s + math.copysign(min(near, _NEAR_SHARE * abs(whole)), whole)

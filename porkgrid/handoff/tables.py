@@ -27,7 +27,8 @@ Floats = NDArray[np.float64]
 _AT_DEPARTURE = ("departure_epoch_jd_tdb", "c3_km2_s2", "rla_deg", "dla_deg", "dv_departure_km_s")
 _AT_FLYBY = ("epoch_jd_tdb", "v_inf_km_s", "turn_deg", "altitude_km", "burn_km_s")
 _AT_ARRIVAL = ("arrival_epoch_jd_tdb", "v_inf_arrival_km_s", "dv_capture_km_s", "entry_speed_km_s")
-_OF_ROUTE = ("dv_total_km_s", "injected_mass_kg", "delivered_mass_kg", "mass_margin_kg")
+_OF_ROUTE = ("dv_total_km_s", "injected_mass_kg", "delivered_mass_kg", "mass_margin_kg", "propellant_kg",
+             "low_orbit_mass_kg", "liftoff_mass_kg")  # fmt: skip
 
 
 def cells_of(problem: Problem, before: Cells, x: Floats) -> Cells:

@@ -17,8 +17,3 @@ class Blocks:
     def texts(self) -> list[str]:
         """All texts, in order of number."""
         return list(self._number_of)
-
-    @property
-    def size(self) -> int:
-        """Characters of all texts together, which are bytes of the page."""
-        return sum(map(len, self._number_of))

@@ -5,6 +5,7 @@ from __future__ import annotations
 import os
 from collections.abc import Callable
 from concurrent.futures import ThreadPoolExecutor
+from functools import partial
 from typing import Any
 
 import numpy as np
@@ -77,12 +78,11 @@ def _jobs(opened: Opened, thinning: Thinning) -> dict[str, Callable[[], str]]:
     def measure(name: str) -> str:
         return packed_grid(read(name, np.nan))
 
-    jobs: dict[str, Callable[[], str]] = {BLOCKED_BY: lambda: packed_grid(read(BLOCKED_BY, NEVER_SWEPT))}
-    for n in range(1, plan.flybys + 1):
-        jobs[f"flyby{n}_epoch_jd_tdb"] = lambda n=n: epochs(n)
-    for name in plan.stored:
-        if name not in jobs and plan.measures[name].dims == BOTH:
-            jobs[name] = lambda name=name: measure(name)
+    jobs: dict[str, Callable[[], str]] = {
+        name: partial(measure, name) for name in plan.stored if plan.measures[name].dims == BOTH
+    }
+    jobs |= {f"flyby{n}_epoch_jd_tdb": partial(epochs, n) for n in range(1, plan.flybys + 1)}
+    jobs[BLOCKED_BY] = lambda: packed_grid(read(BLOCKED_BY, NEVER_SWEPT))
     return jobs
 
 

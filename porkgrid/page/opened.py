@@ -102,7 +102,7 @@ def _ranked_so_far(opened: Opened) -> pd.DataFrame:
     i, j, _ = local_bests(read, departures, plan.rank_sign)
     if not i.size:
         return tabulate(plan, [])
-    picked = picked_at(survey.path, plan, i, j)
+    picked = picked_at(survey.grid, plan, i, j)
     epochs = np.array([one.epochs for one in picked])
     return tabulate(plan, [picked[row] for row in distinct(epochs, rank.apart_days, rank.keep)])
 

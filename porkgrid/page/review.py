@@ -24,6 +24,7 @@ _FIGURE_BYTES = 2_500_000  # of those, for figures of all surveys together
 # What a page redraws within a tenth of a second in a browser, and what several surveys hold together
 _MOST_CELLS, _MOST_CELLS_IN_ALL = 125_000, 400_000
 _COARSER = 1.5  # how much fewer cells are tried where a page would grow too large
+_LEAST_CELLS = 1000  # fewer are no chart
 
 # In the order in which they use each other
 _SCRIPTS = ("unpack", "model", "rank", "format", "chart", "reading", "limits", "table", "figures", "page")
@@ -55,24 +56,28 @@ def write_review(opened: Sequence[Opened], comparisons: Sequence[Path], path: Pa
     RequestError where plotly is not installed, or the surveys are too many for a page of `MOST_BYTES`.
     """
     library = plotly_script()
-    shell = _asset("page.html")
-    fixed = len(library.encode()) + 200_000
     most_cells = min(_MOST_CELLS, _MOST_CELLS_IN_ALL // len(opened))
     while True:
         blocks, room = Blocks(), Room(_FIGURE_BYTES)
         thinnings = [thinning_for(*each.survey.plan.shape, most_cells) for each in opened]
-        document = _document(opened, thinnings, comparisons, blocks, room)
-        if fixed + blocks.size <= MOST_BYTES:
+        html = _html(_document(opened, thinnings, comparisons, blocks, room), blocks, library)
+        size = len(html.encode())
+        if size <= MOST_BYTES:
             break
-        most_cells = int(most_cells / _COARSER)
-        if most_cells < 1000:
+        most_cells = int(min(most_cells, max(each.cells for each in thinnings)) / _COARSER)
+        if most_cells < _LEAST_CELLS:
             raise RequestError(
                 f"{len(opened)} surveys are too many for a page of {MOST_BYTES / 1e6:g} MB; give fewer"
             )
-    html = _filled(
-        shell,
+    write_whole(path, html)
+    return Written(path, size, tuple(thinnings), tuple(room.left_out))
+
+
+def _html(document: dict[str, Any], blocks: Blocks, library: str) -> str:
+    return _filled(
+        _asset("page.html"),
         {
-            "title": _escaped(" · ".join(each.survey.plan.scenario.name for each in opened)),
+            "title": _escaped(" · ".join(survey["name"] for survey in document["surveys"])),
             "style": _asset("page.css"),
             "data": _as_json(document),
             "blocks": "\n".join(
@@ -83,8 +88,6 @@ def write_review(opened: Sequence[Opened], comparisons: Sequence[Path], path: Pa
             "script": "\n".join(_asset(f"{name}.js") for name in _SCRIPTS),
         },
     )
-    write_whole(path, html)
-    return Written(path, len(html.encode()), tuple(thinnings), tuple(room.left_out))
 
 
 def _document(

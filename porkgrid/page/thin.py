@@ -70,11 +70,7 @@ def swept_part(
 
     rows, columns: slices with start, stop and step. Returns (departures, arrivals) of the variable's type.
     """
-    shape = (
-        len(range(rows.start, rows.stop, rows.step)),
-        len(range(columns.start, columns.stop, columns.step)),
-    )
-    part = np.full(shape, fill, dtype=variable.dtype)
+    part = np.full((len(_numbers(rows)), len(_numbers(columns))), fill, dtype=variable.dtype)
     for tile in tiles:
         i, j = _inside(rows, tile.rows), _inside(columns, tile.columns)
         read = variable.isel(departure=_taken(rows, i), arrival=_taken(columns, j))
@@ -85,17 +81,18 @@ def swept_part(
 
 def _inside(taken: slice, block: slice) -> slice:
     """Which of the numbers that a slice takes lie in a block, as places among those taken."""
-    first, end = (
-        -(-(max(edge, taken.start) - taken.start) // taken.step) for edge in (block.start, block.stop)
-    )
-    count = len(range(taken.start, taken.stop, taken.step))
-    return slice(min(first, count), min(end, count))
+    first, end = (np.searchsorted(_numbers(taken), edge) for edge in (block.start, block.stop))
+    return slice(int(first), int(end))
 
 
 def _taken(taken: slice, places: slice) -> slice:
     """The numbers at these places of a slice."""
-    numbers = range(taken.start, taken.stop, taken.step)[places]
+    numbers = _numbers(taken)[places]
     return slice(numbers.start, numbers.stop, numbers.step)
+
+
+def _numbers(taken: slice) -> range:
+    return range(taken.start, taken.stop, taken.step)
 
 
 def _every(step: int, side: str) -> str:

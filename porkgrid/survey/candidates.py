@@ -37,7 +37,7 @@ class Picked:
 
 def pick(folder: Path, plan: Plan, by: str, sign: float, keep: int, apart_days: float) -> list[Picked]:
     """The distinct local bests of a stored measure, best first."""
-    grid = open_grid(folder)
+    grid = open_grid(folder, plan.shape, plan.stored)
 
     def read(rows: slice) -> tuple[np.ndarray, np.ndarray]:
         band = grid[[by, BLOCKED_BY]].isel(departure=rows)
@@ -49,9 +49,9 @@ def pick(folder: Path, plan: Plan, by: str, sign: float, keep: int, apart_days: 
     return [_picked(plan, cells, epochs, row) for row in distinct(epochs, apart_days, keep)]
 
 
-def picked_at(folder: Path, plan: Plan, i: np.ndarray, j: np.ndarray) -> list[Picked]:
+def picked_at(grid: xr.Dataset, plan: Plan, i: np.ndarray, j: np.ndarray) -> list[Picked]:
     """The routes in cells (i, j) of a survey's grid, index arrays (k,), all of them cells that are flown."""
-    cells, epochs = _cells_of_candidates(open_grid(folder), plan, i, j)
+    cells, epochs = _cells_of_candidates(grid, plan, i, j)
     return [_picked(plan, cells, epochs, row) for row in range(len(epochs))]
 
 

@@ -22,6 +22,7 @@ REFINED = "refined.csv"
 # What is ours in a folder, as patterns, besides survey.json, which says that they are.
 OURS = (SCENARIO, CANDIDATES, REFINED, FIGURES, STORE, LEDGER, "period-*.csv", "slip.csv", "trade.csv",
         "page.html", "handoff")  # fmt: skip
+_PATHS = "surrogateescape"  # how Python holds what is not text in the names of files
 PART = ".part"  # ending of a file that is being written
 FORMAT = 2  # of the folder: raised when what is in it cannot be read as before
 
@@ -92,7 +93,7 @@ def _survey_json(folder: Path) -> dict[str, Any]:
     """The survey.json of a folder, of whatever version. RequestError where it is none of ours."""
     path = folder / PROVENANCE
     try:
-        provenance = json.loads(path.read_text(encoding="utf-8"))
+        provenance = json.loads(path.read_text(encoding="utf-8", errors=_PATHS))
     except FileNotFoundError:
         raise RequestError(
             f"{folder}: not a survey folder: it has no {PROVENANCE}; `porkgrid sweep` makes one"
@@ -115,7 +116,7 @@ def write_provenance(folder: Path, provenance: dict[str, Any]) -> None:
 def write_whole(path: Path, text: str) -> None:
     """Write a text file so that no reader ever finds it half-written."""
     part = path.with_name(path.name + PART)
-    with part.open("w", encoding="utf-8") as file:
+    with part.open("w", encoding="utf-8", errors=_PATHS) as file:
         file.write(text)
         file.flush()
         os.fsync(file.fileno())

@@ -14,7 +14,7 @@ log = logging.getLogger("porkgrid.sweep")
 @contextmanager
 def logged(folder: Path) -> Iterator[None]:
     """Write what is logged to the folder's log as well, with the time of day (UTC offset included)."""
-    book = logging.FileHandler(folder / LOG, encoding="utf-8")
+    book = logging.FileHandler(folder / LOG, encoding="utf-8", errors="surrogateescape")
     book.setFormatter(logging.Formatter("%(asctime)s %(levelname)s %(message)s", "%Y-%m-%dT%H:%M:%S%z"))
     book.handleError = lambda record: None  # type: ignore[method-assign]  # a full disk stops no sweep
     terminal = logging.StreamHandler()

@@ -236,7 +236,7 @@ def _free_routes(
     """The best allowed route of each of some ascending days, with an arrival date out of a range."""
     cells = list(_best_cells(survey, by, sign, days, flown, arrivals))
     i, j = np.array(cells).T
-    return picked_at(survey.path, survey.plan, i, j)
+    return picked_at(survey.grid, survey.plan, i, j)
 
 
 def _best_cells(

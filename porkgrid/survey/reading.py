@@ -7,6 +7,7 @@ nobody may fly on. Every chunk of a finished survey is there, so that one that i
 from __future__ import annotations
 
 import re
+from collections.abc import Hashable, Mapping, Sequence
 from pathlib import Path
 
 import xarray as xr
@@ -22,10 +23,11 @@ _CHUNK = re.compile(r"/c(/\d+)*$")
 _TILE = re.compile(r"/c/\d+/\d+$")
 
 
-def open_grid(folder: Path) -> xr.Dataset:
+def open_grid(folder: Path, shape: tuple[int, int], stored: Sequence[str]) -> xr.Dataset:
     """The measures of every cell of a survey, read as they are asked for.
 
-    RequestError, here or when they are read, where the store is foreign, incomplete or damaged.
+    `shape` is departure × arrival dates and `stored` the measures that the survey keeps. RequestError, here
+    or when values are read, where the store is foreign, incomplete or damaged.
     """
     path = folder / STORE
     if not path.is_dir():
@@ -39,11 +41,22 @@ def open_grid(folder: Path) -> xr.Dataset:
         raise RequestError(
             f"{path}: cannot be opened as a survey's grid ({type(error).__name__}: {reason}); {_ANEW}"
         ) from None
-    missing = [str(name) for name in grid.variables if not (path / str(name) / "zarr.json").is_file()]
-    missing += [BLOCKED_BY] if BLOCKED_BY not in grid.variables else []
+    if BLOCKED_BY in grid.variables:
+        _refuse_shape(path, grid[BLOCKED_BY].sizes, shape)
+    missing = {str(name) for name in grid.variables if not (path / str(name) / "zarr.json").is_file()}
+    missing |= {*stored, BLOCKED_BY} - grid.variables.keys()
     if missing:
-        raise RequestError(f"{path}: has no array {', '.join(missing)} any more; {_ANEW}")
+        raise RequestError(f"{path}: has no array {', '.join(sorted(missing))}; {_ANEW}")
     return grid
+
+
+def _refuse_shape(path: Path, found: Mapping[Hashable, int], shape: tuple[int, int]) -> None:
+    if dict(found) != {"departure": shape[0], "arrival": shape[1]}:
+        sizes = " × ".join(f"{size} {name}s" for name, size in found.items())
+        right = f"{shape[0]} × {shape[1]} dates"
+        raise RequestError(
+            f"{path}: is the grid of another survey: {sizes}, and this one has {right}; {_ANEW}"
+        )
 
 
 _AGAIN = "`porkgrid sweep` with the same scenario computes it again"

@@ -23,7 +23,6 @@ from porkgrid.survey.folder import (
 )
 from porkgrid.survey.plan import Plan, make_plan
 from porkgrid.survey.reading import open_grid
-from porkgrid.survey.store import BLOCKED_BY, STORE
 
 _RANK_AGAIN = "`porkgrid sweep` with the same scenario writes it again"
 
@@ -41,15 +40,9 @@ class Survey:
 
         RequestError, here or when values are read, where the grid on disk is not as it was written.
         """
-        grid, held = open_grid(self.path), self.provenance["grid"]
-        shape = {"departure": held["departure_dates"], "arrival": held["arrival_dates"]}
-        if dict(grid[BLOCKED_BY].sizes) != shape:
-            found = " × ".join(f"{size} {name}s" for name, size in grid[BLOCKED_BY].sizes.items())
-            raise RequestError(
-                f"{self.path / STORE}: is the grid of another survey: {found}, and this one has "
-                f"{' × '.join(map(str, shape.values()))} dates; sweep the survey's scenario anew with --fresh"
-            )
-        return grid
+        dates = self.provenance["grid"]
+        shape = dates["departure_dates"], dates["arrival_dates"]
+        return open_grid(self.path, shape, self.provenance.get("stored", ()))
 
     @cached_property
     def candidates(self) -> pd.DataFrame:

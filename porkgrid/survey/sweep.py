@@ -135,6 +135,7 @@ def _begin(folder: Path, plan: Plan) -> dict[str, Any]:
         | {"python": platform.python_version()},
         "bodies": {table.body.name: table.body.motion for table in plan.tables},
         "tiles": {"tile_cells": plan.tile_cells, "tile_columns": plan.tile_columns},
+        "stored": list(plan.stored),
         "grid": {"departure_dates": plan.shape[0], "arrival_dates": plan.shape[1]},
         "conventions": "km, km/s, deg; ICRF axes; epochs TDB; patched conics about the Sun as a point mass",
         "caution": CAUTION,

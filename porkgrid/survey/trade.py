@@ -117,7 +117,7 @@ def front_table(survey: Survey, front: Front, keep: int) -> pd.DataFrame:
     """Every measure of at most `keep` cells of the front, evenly spread along it, at full precision."""
     chosen = spread(front.costs, keep)
     return tabulate(
-        survey.plan, picked_at(survey.path, survey.plan, front.rows[chosen], front.columns[chosen])
+        survey.plan, picked_at(survey.grid, survey.plan, front.rows[chosen], front.columns[chosen])
     )
 
 

@@ -2,9 +2,10 @@
 
     python tests/benchmarks/bench_fullforce.py
 
-Warm checks of a direct candidate and of one by Venus, in turns with plain flights of the same legs: scipy's
-DOP853 at the same tolerances, with the equations of motion in numpy on positions that the kernel is asked for.
-Prints seconds, and each check as a ratio to flying its legs once in that way.
+Warm checks of a direct candidate and of one by Venus, in turns with one plain flight of their legs: scipy's
+DOP853 at a relative tolerance of 1e-9, with equations of motion in numpy on positions asked of the kernel.
+(At the check's own tolerance the kernel's rounding of times to 2 microseconds would hold its steps up.)
+Prints seconds, and each check as a ratio to that flight. Two minutes, nearly all of it in plain flights.
 """
 
 from __future__ import annotations
@@ -20,7 +21,6 @@ from porkgrid.handoff.forces import PULLING
 from porkgrid.handoff.fullforce import full_force_check
 from porkgrid.handoff.report import FlownLeg
 from porkgrid.physics.constants import DAY_S, GM_SUN_KM3_S2
-from porkgrid.physics.nbody import ATOL_KM, ATOL_KM_S, RTOL
 from porkgrid.sky.bodies import BODIES, gm_of
 from porkgrid.sky.kernel import Ephemeris, open_ephemeris
 from porkgrid.survey.admit import load_scenario
@@ -28,7 +28,7 @@ from porkgrid.survey.candidates import Picked
 from porkgrid.survey.legs import LegOption
 from porkgrid.survey.plan import Plan, make_plan
 
-ROUNDS = 3
+ROUNDS, PLAIN_RTOL = 2, 1e-9
 ORBIT = "{ periapsis_altitude_km = 200, apoapsis_altitude_km = 200 }"
 # bodies with the epochs (TDB Julian dates) of a candidate of scenarios/
 ROUTES = {
@@ -69,9 +69,9 @@ def plain_flight(ephemeris: Ephemeris, leg: FlownLeg) -> np.ndarray:
         return np.concatenate([state[3:], pull])
 
     start = np.concatenate([leg.position[:, 0], leg.velocity[:, 0]])
-    atol = np.repeat([ATOL_KM, ATOL_KM_S], 3)
+    atol = np.repeat([1e-3, 1e-9], 3)
     span = (leg.seconds[0], leg.seconds[-1])
-    return solve_ivp(motion, span, start, "DOP853", rtol=RTOL, atol=atol).y[:, -1]
+    return solve_ivp(motion, span, start, "DOP853", rtol=PLAIN_RTOL, atol=atol).y[:, -1]
 
 
 def main() -> None:

@@ -56,5 +56,5 @@ def test_seconds_and_julian_dates_are_each_others_inverse(forces):
 
 
 def test_dates_outside_the_kernel_are_refused_by_name(ephemeris):
-    with pytest.raises(RequestError, match="mercury: .* is outside the ephemeris"):
+    with pytest.raises(RequestError, match=r"mercury: .* is outside the ephemeris"):
         forces_over(ephemeris, [], 2688900.5, 2689100.5)

@@ -235,7 +235,7 @@ def test_a_flyby_that_would_pass_too_low_is_put_at_the_least_altitude(plan_for):
     assert report.verdict == CONFIRMED
     assert report.encounters[1].held == "radius"
     assert report.line("flyby1_altitude_km").full_force == pytest.approx(5640.0, abs=0.01)
-    assert 1.0 < report.encounters[1].burn_left_m_s < 50.0
+    assert 1.0 < report.encounters[1].burn_left_m_s < 100.0
 
 
 def test_a_newly_broken_limit_is_a_change(plan_for):

@@ -1,4 +1,4 @@
-"""Motion among point masses: limits that are known in closed form, and what must hold between ways to tell it."""
+"""Motion among point masses: limits known in closed form, and what must hold between ways to tell it."""
 
 import numpy as np
 import pytest
@@ -66,7 +66,7 @@ def test_without_planets_the_path_is_the_conic_to_a_metre(empty, state, days):
 
 def test_a_body_without_gm_may_be_flown_through(empty):
     place, velocity, _ = state_on_track(empty.tracks, 0, 0.0)
-    state = np.concatenate([place, velocity + [0.0, 0.0, 3.0]])
+    state = np.concatenate([place, velocity + np.array([0.0, 0.0, 3.0])])
     end = fly(empty, 0.0, 20 * DAY, state, CENTRE).states[:, -1]
     expected, _ = propagate(state[:3], state[3:], 20 * DAY, GM_SUN)
     np.testing.assert_allclose(end[:3], expected, rtol=0.0, atol=1e-3)

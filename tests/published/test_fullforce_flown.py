@@ -1,15 +1,16 @@
 """Missions that flew, in full force: published encounter dates in, published closest approach out.
 
-The same dates and distances as in test_flown_flybys.py, with the pull of all planets on the legs, from a parking
-orbit and into the published last approach. What patched conics leave out is then in, and the distance at a flyby
-comes out nearer to the one that was flown: Voyager 1 at Jupiter 0.7 % off instead of 2.9, Voyager 2 at Jupiter
-0.3 instead of 3.7, at Saturn 0.4 instead of 2.6. At Venus (Mariner 10: 26 km off instead of 30) and Uranus (0.20 %
-instead of 0.22) both are about as near as the corrections that were flown leave room for: this model has none.
+The same dates and distances as in test_flown_flybys.py, with the pull of all planets on the legs, from a
+parking orbit and into the published last approach. What patched conics leave out is then in, and the distance
+at a flyby comes out nearer to the one that was flown: Voyager 1 at Jupiter 0.7 % off instead of 2.9,
+Voyager 2 at Jupiter 0.3 instead of 3.7 and at Saturn 0.4 instead of 2.6. At Venus (Mariner 10: 26 km off
+instead of 30) and Uranus (0.20 % instead of 0.22) both ways are as near as the corrections that were flown
+leave room for.
 
-Galileo's first legs cannot tell: Venus is published as "about 16 000 km" and the launch as a day. With the hour of
-the upper stage's burn (1989-10-19 00:15 UTC, memory) both ways fall within the rounding. What full force does show
-is that less had to be burned: the flight made its largest corrections, some 35 m/s, between Venus and the Earth
-(memory), and what the two dates ask for falls from 106 to 71 m/s.
+Galileo's first legs cannot tell: Venus is published as "about 16 000 km" and the launch as a day. With the
+hour of the upper stage's burn (1989-10-19 00:15 UTC, memory) both ways fall within the rounding. What full
+force does show is that less had to be burned: the flight made its largest corrections, some 35 m/s, between
+Venus and the Earth (memory), and what the dates ask for falls from 106 to 71 m/s.
 """
 
 import numpy as np
@@ -38,7 +39,7 @@ VOYAGER_2 = [
 GALILEO = [("earth", "1989-10-19T00:15"), ("venus", "1990-02-10T06:00"), ("earth", "1990-12-08T20:35")]
 
 FLOWN = {
-    # encounters; published radii of the flybys, km; altitude at the last encounter, km (mission pages, memory)
+    # encounters; published radii of the flybys, km; altitude at the last encounter, km (memory)
     "Mariner 10": (MARINER_10, [BODIES["venus"].radius_km + 5768.0], 703.0),
     "Voyager 1": (VOYAGER_1, [348_890.0], 184_300.0 - BODIES["saturn"].radius_km),
     "Voyager 2": (VOYAGER_2, [721_670.0, 161_000.0, 107_000.0], 29_240.0 - BODIES["neptune"].radius_km),

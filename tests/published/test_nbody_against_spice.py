@@ -1,4 +1,4 @@
-"""The integrator against others: SPICE's two-body motion, and an integration of its own on SPICE's positions."""
+"""The integrator against others: SPICE's two-body motion, and other methods on positions from SPICE."""
 
 import numpy as np
 import pytest

@@ -195,7 +195,7 @@ def test_the_best_held_period_is_that_of_trying_every_days_dates(by_venus):
     grid, plan = by_venus.grid.load(), by_venus.plan
     cost = np.where(grid["blocked_by"].values == 0, grid["dv_total_km_s"].values, np.inf)
     open_days = np.flatnonzero(np.isfinite(cost).any(axis=1))
-    sets = picked_at(by_venus.path, plan, open_days, cost[open_days].argmin(axis=1))
+    sets = picked_at(by_venus.grid, plan, open_days, cost[open_days].argmin(axis=1))
     table = np.full((len(cost), len(sets)), np.inf)
     for column, (day, one) in enumerate(zip(open_days, sets, strict=True)):
         for row in range(max(0, day - 3), min(len(cost), day + 4)):
