@@ -8,6 +8,7 @@ thousand times more.
 from __future__ import annotations
 
 import math
+from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
@@ -39,11 +40,33 @@ def carry(forces: Forces, outset: Outset, until_s: float) -> Arc:
     """Fly until a time: the path as states from the Sun."""
     origin = forces.index(outset.body)
     switch_s = _switch_s(outset, until_s)
-    near = fly(forces.field, outset.t_s, switch_s, outset.relative, origin)
-    carried = np.stack([body_state(forces, outset.body, t) for t in near.t_s], axis=1)
-    from_sun = near.states + carried
-    far = fly(forces.field, switch_s, until_s, from_sun[:, -1], CENTRE)
-    return Arc(np.concatenate([near.t_s, far.t_s[1:]]), np.concatenate([from_sun, far.states[:, 1:]], axis=1))
+    told = fly(forces.field, outset.t_s, switch_s, outset.relative, origin)
+
+    def near_from_sun(t_s: Floats) -> Floats:
+        return told.between(t_s) + _body_states(forces, outset.body, t_s)
+
+    states = told.states + _body_states(forces, outset.body, told.t_s)
+    near = Arc(told.t_s, states, near_from_sun)
+    far = fly(forces.field, switch_s, until_s, states[:, -1], CENTRE)
+    early, late = (near, far) if until_s > outset.t_s else (far, near)
+    return Arc(
+        np.concatenate([near.t_s, far.t_s[1:]]),
+        np.concatenate([near.states, far.states[:, 1:]], axis=1),
+        spliced(early, late, switch_s),
+    )
+
+
+def spliced(early: Arc, late: Arc, seam_s: float) -> Callable[[Floats], Floats]:
+    """States (6, m) at times (m,) from the one arc up to the seam, and from the other after it."""
+
+    def between(t_s: Floats) -> Floats:
+        states = np.empty((6, t_s.size))
+        for arc, here in ((early, t_s <= seam_s), (late, t_s > seam_s)):
+            if here.any():
+                states[:, here] = arc.between(t_s[here])
+        return states
+
+    return between
 
 
 def carry_with_sensitivity(forces: Forces, outset: Outset, until_s: float) -> tuple[Floats, Floats]:
@@ -68,9 +91,14 @@ def body_state(forces: Forces, body: Body, t_s: float) -> Floats:
     return np.concatenate([place, velocity])
 
 
+def _body_states(forces: Forces, body: Body, t_s: Floats) -> Floats:
+    return np.stack([body_state(forces, body, float(t)) for t in t_s], axis=1)
+
+
 def _switch_s(outset: Outset, until_s: float) -> float:
     whole = until_s - outset.t_s
     gm, radius = outset.body.gm_km3_s2, float(np.linalg.norm(outset.relative[:3]))
-    bare = gm is None or radius == 0.0
-    near = _NEAR_BARE_S if bare else _NEAR_TIMES * math.sqrt(radius**3 / gm)
+    near = _NEAR_BARE_S
+    if gm is not None and radius > 0.0:
+        near = _NEAR_TIMES * math.sqrt(radius**3 / gm)
     return outset.t_s + math.copysign(min(near, _NEAR_SHARE * abs(whole)), whole)

@@ -17,7 +17,7 @@ from itertools import pairwise
 import numpy as np
 from numpy.typing import NDArray
 
-from porkgrid.handoff.flights import Outset, body_state, carry
+from porkgrid.handoff.flights import Outset, body_state, carry, spliced
 from porkgrid.handoff.newton import Solution
 from porkgrid.handoff.patched import Patched, patched
 from porkgrid.handoff.report import THRESHOLDS, Attempt, FlownLeg, FullForceReport
@@ -146,5 +146,6 @@ def _fly(problem: Problem, x: Floats) -> tuple[list[FlownLeg], tuple[float, floa
         gaps.append((float(np.linalg.norm(gap[:3])), float(np.linalg.norm(gap[3:]))))
         times = np.concatenate([ahead.t_s, behind.t_s[-2::-1]])
         states = np.concatenate([ahead.states, behind.states[:, -2::-1]], axis=1)
-        legs.append(FlownLeg(n, problem.forces.epoch_jd, times, states[:3], states[3:]))
+        between = spliced(ahead, behind, problem.meeting_s(n - 1))
+        legs.append(FlownLeg(n, problem.forces.epoch_jd, times, states[:3], states[3:], between))
     return legs, (max(gap[0] for gap in gaps), max(gap[1] for gap in gaps)), misses

@@ -28,6 +28,9 @@ POLE = np.array(ECLIPTIC_POLE_ICRF)  # of the aim planes, as in the figure of a 
 LOW_ALTITUDE_KM = 200.0
 # A burn of less is what the dates' grid or their refinement leaves over, and is not meant.
 LEAST_BURN_KM_S = 1e-3
+_EXCESS = (
+    "C3, asymptotes, v∞ and aim points in full force are those of the hyperbola that osculates at periapsis"
+)
 
 
 @dataclass(frozen=True, eq=False)
@@ -67,7 +70,7 @@ def patched(plan: Plan, picked: Picked) -> Patched:
         guesses.append(guess)
     guesses.append(_vector(cells.legs[-1].v_inf_in))
     problem = Problem(forces, (departure, *passes, arrival))
-    return Patched(cells, problem, np.concatenate(guesses), (leave, arrive))
+    return Patched(cells, problem, np.concatenate(guesses), (leave, arrive, _EXCESS))
 
 
 def _departure(cells: Cells, forces: Forces) -> tuple[End, str]:
@@ -89,12 +92,15 @@ def _departure(cells: Cells, forces: Forces) -> tuple[End, str]:
 def _arrival(cells: Cells, forces: Forces, jd: float) -> tuple[End, str]:
     body = cells.arrival.body
     if cells.capture is not None:
-        radius, what = float(np.ravel(cells.capture_periapsis_km)[0]), "the capture orbit's periapsis"
+        radius = float(np.ravel(cells.capture_periapsis_km)[0])
+        what = "arrival at the capture orbit's periapsis"
     else:
         altitude = body.entry_altitude_km or body.min_flyby_altitude_km or LOW_ALTITUDE_KM
         radius, what = _low_periapsis(body, altitude)
         what = f"no capture orbit in the scenario: {what}"
-    return End(body, forces.seconds(jd), radius, POLE, 0.0), f"arrival at {what}, prograde, B·R = 0"
+    if radius > 0.0:
+        what += ", on the side of +T: prograde, B·R = 0"
+    return End(body, forces.seconds(jd), radius, POLE, 0.0), what
 
 
 def _low_periapsis(body: Body, altitude_km: float) -> tuple[float, str]:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
@@ -51,7 +52,8 @@ class FlownLeg:
     """A leg as integrated, from periapsis to periapsis, at the integrator's own steps.
 
     `seconds` (k,) count from `reference_jd` (TDB) and are exact, where Julian dates round to 40 microseconds;
-    position (3, k) km and velocity (3, k) km/s are heliocentric in ICRF axes.
+    position (3, k) km and velocity (3, k) km/s are heliocentric in ICRF axes. The steps are uneven, as short
+    as hundredths of a second and as long as a week: for states to interpolate between, ask `at`.
     """
 
     number: int
@@ -59,6 +61,18 @@ class FlownLeg:
     seconds: Floats
     position: Floats
     velocity: Floats
+    between: Callable[[Floats], Floats]  # states (6, m) at seconds (m,)
+
+    def at(self, seconds: Floats) -> tuple[Floats, Floats]:
+        """Position (3, m) km and velocity (3, m) km/s at any times (m,) of the leg, to millimetres.
+
+        ValueError for a time before its start or after its end.
+        """
+        wanted = np.asarray(seconds, dtype=float)
+        if wanted.size and not (self.seconds[0] <= wanted.min() and wanted.max() <= self.seconds[-1]):
+            raise ValueError(f"leg {self.number} is flown from {self.seconds[0]} to {self.seconds[-1]} s")
+        states = self.between(wanted)
+        return states[:3], states[3:]
 
     @property
     def jd(self) -> Floats:

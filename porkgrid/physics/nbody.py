@@ -19,6 +19,7 @@ velocity.
 from __future__ import annotations
 
 import math
+from collections.abc import Callable
 from dataclasses import dataclass
 from typing import Any
 
@@ -60,10 +61,14 @@ class FlightError(Exception):
 
 @dataclass(frozen=True, eq=False)
 class Arc:
-    """A path as integrated: times (k,) s in the order flown, states (6, k)."""
+    """A path as integrated: times (k,) s in the order flown, states (6, k) at the integrator's own steps.
+
+    `between` gives the states (6, m) at any times (m,) of the flight, by the method's own interpolation.
+    """
 
     t_s: Floats
     states: Floats
+    between: Callable[[Floats], Floats]
 
 
 def acceleration(field: Field, t_s: float, state: Floats, origin: int) -> Floats:
@@ -77,10 +82,11 @@ def fly(field: Field, t0_s: float, t1_s: float, state: Floats, origin: int) -> A
     arguments = (origin, *_arguments(field))
     atol = np.repeat([ATOL_KM, ATOL_KM_S], 3)
     path = solve_ivp(
-        lambda t, y: _motion(t, y, *arguments), (t0_s, t1_s), state, METHOD, rtol=RTOL, atol=atol
-    )
+        lambda t, y: _motion(t, y, *arguments),
+        (t0_s, t1_s), state, METHOD, rtol=RTOL, atol=atol, dense_output=True,
+    )  # fmt: skip
     _refuse_broken(path)
-    return Arc(path.t, path.y)
+    return Arc(path.t, path.y, path.sol)
 
 
 def fly_with_sensitivity(

@@ -6,9 +6,11 @@ from survey_scenarios import written
 
 from porkgrid.errors import RequestError
 from porkgrid.handoff import shooting, verdict
+from porkgrid.handoff.forces import forces_over
 from porkgrid.handoff.fullforce import full_force_check
 from porkgrid.handoff.report import CHANGED, CONFIRMED, FAILED
 from porkgrid.physics.conics import propagate
+from porkgrid.physics.nbody import CENTRE, fly
 from porkgrid.sky.bodies import BODIES
 from porkgrid.sky.kernel import open_ephemeris
 from porkgrid.survey.admit import load_scenario
@@ -172,6 +174,29 @@ def test_legs_run_from_periapsis_to_periapsis(name, request):
             assert np.linalg.norm(leg.velocity[:, k] - speed[:, 0] - velocity) <= 1e-8
 
 
+@pytest.mark.parametrize("name", ["tern", "curlew"])
+def test_a_leg_gives_its_states_at_any_time(name, request):
+    report = request.getfixturevalue(name)
+    for leg in report.legs:
+        position, velocity = leg.at(leg.seconds)
+        assert np.abs(position - leg.position).max() <= 1e-4  # km; the joint is somewhere between
+        assert np.abs(velocity - leg.velocity).max() <= 1e-9
+        with pytest.raises(ValueError, match="is flown from"):
+            leg.at(np.array([leg.seconds[-1] + 1.0]))
+
+
+def test_between_steps_a_leg_is_where_an_integration_from_the_last_step_comes_to(tern):
+    leg = tern.legs[0]
+    forces = forces_over(open_ephemeris(), [], *TERN_DAYS)
+    for k in range(0, len(leg.seconds) - 1, 20):
+        then = 0.6 * leg.seconds[k] + 0.4 * leg.seconds[k + 1]
+        start = np.concatenate([leg.position[:, k], leg.velocity[:, k]])
+        expected = fly(forces.field, leg.seconds[k], then, start, CENTRE).states[:, -1]
+        position, velocity = leg.at(np.array([then]))
+        assert np.linalg.norm(position[:, 0] - expected[:3]) <= 1e-4
+        assert np.linalg.norm(velocity[:, 0] - expected[3:]) <= 1e-8
+
+
 def test_between_encounters_the_path_is_nearly_a_conic_and_not_quite(tern):
     """In mid-flight planets bend the path by kilometres a day or less."""
     leg = tern.legs[0]
@@ -213,7 +238,9 @@ def test_without_orbits_the_altitudes_taken_are_said(plan_for):
     assert leave.periapsis_km == pytest.approx(BODIES["earth"].radius_km + 200.0)
     assert arrive.periapsis_km == pytest.approx(BODIES["mars"].radius_km + 125.0)
     assert "no parking orbit in the scenario: periapsis at 200 km altitude" in report.assumptions[0]
-    assert "no capture orbit in the scenario: periapsis at 125 km altitude" in report.assumptions[1]
+    assert (
+        "no capture orbit in the scenario: periapsis at 125 km altitude, on the side" in report.assumptions[1]
+    )
     assert report.verdict == CONFIRMED
 
 
@@ -257,9 +284,9 @@ def test_a_newly_broken_limit_is_a_change(plan_for):
 def test_each_threshold_can_withhold_the_confirmation(plan_for, monkeypatch, threshold, value, reason):
     monkeypatch.setattr(verdict, threshold, value)
     report = full_force_check(plan_for(CURLEW), flown(*CURLEW_DAYS))
-    held = [line for line in report.reasons if reason in line]
     assert report.verdict == CHANGED
-    assert held or report.encounters[1].held == "epoch"
+    assert len(report.reasons) == 1
+    assert reason in report.reasons[0]
 
 
 def test_what_cannot_be_joined_is_reported_with_what_was_reached(plan_for, monkeypatch):

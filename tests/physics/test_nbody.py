@@ -139,3 +139,13 @@ def test_a_fall_into_a_centre_is_refused(field):
 def test_a_state_that_is_not_known_is_refused(field, flight):
     with pytest.raises(FlightError, match="not known"):
         flight(field, 0.0, DAY, np.full(6, np.nan), CENTRE)
+
+
+def test_between_its_steps_an_arc_is_where_a_flight_to_there_comes_to(field):
+    arc = fly(field, 0.0, 100 * DAY, STATES[1], CENTRE)
+    for k in range(0, len(arc.t_s) - 1, 10):
+        then = 0.6 * arc.t_s[k] + 0.4 * arc.t_s[k + 1]
+        expected = fly(field, arc.t_s[k], then, arc.states[:, k], CENTRE).states[:, -1]
+        found = arc.between(np.array([then]))[:, 0]
+        assert np.linalg.norm(found[:3] - expected[:3]) <= 1e-4
+        assert np.linalg.norm(found[3:] - expected[3:]) <= 1e-10

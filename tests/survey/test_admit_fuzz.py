@@ -6,13 +6,13 @@ import copy
 import math
 import tomllib
 from collections.abc import Sequence
-from datetime import date, datetime, time, timedelta, timezone
+from datetime import time, timedelta, timezone
 from pathlib import Path
-from typing import Any
 
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
+from toml_text import document, places
 
 from porkgrid.errors import RequestError
 from porkgrid.survey.admit import load_scenario
@@ -91,32 +91,6 @@ values = st.recursive(
 marks = st.sampled_from(['"', "\n[[encounter]]\n", "=", "{", "}", "[", "]", "-", "9"])
 
 
-def toml(value: Any) -> str:
-    """A value as inline TOML."""
-    match value:
-        case bool():
-            return str(value).lower()
-        case float():
-            return repr(value)
-        case int():
-            return hex(value) if value > 2**63 else str(value)  # hexadecimal takes numbers of any length
-        case str():
-            return '"' + "".join(f"\\U{ord(each):08X}" for each in value) + '"'
-        case list():
-            return "[" + ", ".join(map(toml, value)) + "]"
-        case dict():
-            return "{" + ", ".join(f"{toml(key)} = {toml(inner)}" for key, inner in value.items()) + "}"
-        case date() | datetime() | time():
-            return value.isoformat()
-    raise TypeError(value)
-
-
-def places(value: Any, here: tuple = ()) -> list[tuple]:
-    """Paths to everything inside a table."""
-    inside = value.items() if isinstance(value, dict) else enumerate(value) if isinstance(value, list) else ()
-    return [path for key, inner in inside for path in [(*here, key), *places(inner, (*here, key))]]
-
-
 @st.composite
 def mutated_tables(draw) -> str:
     """A right scenario with one to four values replaced, removed, or joined by another."""
@@ -138,7 +112,7 @@ def mutated_tables(draw) -> str:
                 parent[draw(keys)] = draw(values)
             case "repeat" if isinstance(parent, list):
                 parent.append(copy.deepcopy(parent[last]))
-    return "\n".join(f"{toml(key)} = {toml(value)}" for key, value in table.items())
+    return document(table)
 
 
 @st.composite

@@ -80,7 +80,7 @@ def assert_refused(run, folder: Path, *says: str) -> None:
 
 def foreign_zarr(path: Path) -> None:
     shutil.rmtree(path)
-    xr.Dataset({"rain": ("x", np.arange(3.0))}).to_zarr(path, zarr_format=3)
+    xr.Dataset({"rain": ("x", np.arange(3.0))}).to_zarr(path, zarr_format=3, consolidated=False)
 
 
 def old_zarr(path: Path) -> None:

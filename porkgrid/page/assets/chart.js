@@ -139,7 +139,7 @@ function layoutOf(model) {
     margin: { l: 92, r: wide > NARROW_PX ? 96 : 14, t: wide > NARROW_PX ? 34 : 70, b: 52 }, // above, room for the mode bar
     paper_bgcolor: "rgba(0,0,0,0)", plot_bgcolor: css("--paper"),
     font: { family: css("--font"), size: 12, color: css("--ink") },
-    xaxis: { ...axis, nticks: Math.max(2, Math.floor(wide / 130)), title: { text: `Departure from ${plain(stops[0])}`, standoff: 8 }, ...reach(model, "departure") },
+    xaxis: { ...axis, nticks: Math.max(3, Math.floor(wide / 130)), title: { text: `Departure from ${plain(stops[0])}`, standoff: 8 }, ...reach(model, "departure") },
     yaxis: { ...axis, nticks: 7, title: { text: `Arrival at ${plain(stops[stops.length - 1])}`, standoff: 8 }, ...reach(model, "arrival") },
     hovermode: "closest",
     dragmode: "zoom",

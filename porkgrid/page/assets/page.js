@@ -159,6 +159,7 @@ function listen() {
     if (now.held && entryBeside(now.model, now.entries, cell) === null) pointAt(cell, false);
     else take(cell);
   });
+  dressForPaper(redraw);
 }
 
 /** Colours as chosen, or as the system has them. */
