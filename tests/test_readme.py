@@ -181,7 +181,7 @@ def test_the_main_job_prints_the_sample_and_makes_the_folder_and_later_commands_
     assert made == {Path(name).parts[0] for name in rows}
 
     for line in porkgrid_lines():
-        if line.split()[1] in ("chart", "rank", "period", "slip", "bodies", "measures"):
+        if line.split()[1] in ("chart", "rank", "period", "slip", "handoff", "bodies", "measures"):
             run_here(line)
             assert capsys.readouterr().out.strip(), line
 

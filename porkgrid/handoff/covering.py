@@ -32,6 +32,7 @@ def write_covering(folder: Path, survey: Survey, picked: Picked, report: FullFor
     keys = ("name", "route", "versions", "kernels", "bodies", "conventions", "fingerprint", "started")
     provenance = {key: survey.provenance[key] for key in keys if key in survey.provenance}
     provenance |= {
+        "models": {"patched/": "patched conics", "full-force/": "full force, point masses"},
         "epochs_jd_tdb": list(picked.epochs),
         "legs": [{"revs": each.revs, "branch": each.branch} for each in picked.options],
         "full_force": {"ephemeris": report.ephemeris, "forces": list(report.forces),

@@ -97,9 +97,22 @@ def _candidates(opened: Opened) -> list[dict[str, Any]]:
             "dates": [str(row[stop]) for stop in stops],
             "epochs": [float(row[name]) for name in epochs],
             "values": {name: float(row[name]) for name in plan.measures},
+            "refined": _refined(row, plan.rank_by, stops),
         }
         for _, row in opened.candidates.iterrows()
     ]
+
+
+def _refined(row: pd.Series, by: str, stops: Sequence[str]) -> dict[str, Any] | None:
+    """What a candidate becomes off the grid, where the table has that (survey.refinedtable)."""
+    if f"refined_{by}" not in row:
+        return None
+    note = row["refined_note"]
+    return {
+        "value": float(row[f"refined_{by}"]),
+        "dates": [str(row[f"refined_{stop}"]) for stop in stops],
+        "note": note if isinstance(note, str) else "",
+    }
 
 
 def _columns(opened: Opened) -> dict[str, Sequence[Any]]:

@@ -27,7 +27,19 @@ _COARSER = 1.5  # how much fewer cells are tried where a page would grow too lar
 _LEAST_CELLS = 1000  # fewer are no chart
 
 # In the order in which they use each other
-_SCRIPTS = ("unpack", "model", "rank", "format", "chart", "reading", "limits", "table", "figures", "paper", "page")
+_SCRIPTS = (
+    "unpack",
+    "model",
+    "rank",
+    "format",
+    "chart",
+    "reading",
+    "limits",
+    "table",
+    "figures",
+    "paper",
+    "page",
+)
 
 
 @dataclass(frozen=True)

@@ -177,6 +177,14 @@ def test_a_row_puts_its_mark_in_the_chart_and_its_numbers_beside(tab, rook):
         assert float(full) == row[name]
 
 
+def test_what_a_candidate_becomes_off_the_grid_is_said(tab, rook):
+    tab.locator("#table tbody tr").nth(1).click()
+    row = rook.candidates.iloc[1]
+    told = tab.locator("#refined").text_content()
+    assert f"{row['refined_departure']} → {row['refined_arrival']}" in told
+    assert f"{row['refined_dv_total_km_s']:.3f} km/s" in told
+
+
 def test_a_click_beside_a_mark_takes_its_row(tab, rook):
     second = rook.candidates.iloc[1]
     i = int(np.searchsorted(stored(rook, "departure_epoch_jd_tdb")[:, 0], second["departure_epoch_jd_tdb"]))

@@ -17,16 +17,19 @@ async function showSurvey(number) {
   const names = survey.grid.measures.map((measure) => measure.name).filter((name) => !NOT_CHARTED.test(name));
   const wanted = names.includes(now.by) ? now.by : survey.rank.by;
   await Promise.all([loadCells(model), loadMeasures(model, [wanted, ...model.limits.map((limit) => limit.measure)])]);
+  if (now.model !== model) return; // another survey was asked for meanwhile
   now.by = wanted;
   byId("measure").replaceChildren(...names.map((name) => element("option", { value: name }, labelOf(model.measures.get(name)))));
   byId("measure").value = wanted;
   layReadings(model);
   layLimits(model, redrawSoon);
-  takeFirst(model);
-  await redraw();
+  settle();
+  takeFirst();
+  await draw();
   requestAnimationFrame(() => performance.mark("first-chart"));
   document.documentElement.dataset.shown = String(number);
   await loadMeasures(model, survey.grid.measures.map((measure) => measure.name));
+  if (now.model !== model) return;
   layTableNow();
   readCell(model, now.cell);
   readChosen(model, now.chosen);
@@ -51,23 +54,31 @@ function tellAbout(survey) {
     "Each cell holds the flyby dates that were best under the limits of the sweep. Limits moved here judge those dates; they do not search for others, and cells in which the sweep kept none stay forbidden.");
 }
 
+/** Settle what limits and measure decide: which cells are allowed, and the candidates. */
+function settle() {
+  applyLimits(now.model);
+  now.entries = ranked(now.model, now.by);
+}
+
 /** Begin with the best candidate. */
-function takeFirst(model) {
-  applyLimits(model);
-  now.chosen = ranked(model, now.by)[0] ?? null;
+function takeFirst() {
+  now.chosen = now.entries[0] ?? null;
   now.cell = now.chosen?.cell ?? null;
 }
 
-/** Draw everything that limits and measure decide. */
-async function redraw() {
+/** Draw what is settled. */
+async function draw() {
   const { model } = now;
-  applyLimits(model);
-  now.entries = ranked(model, now.by);
   now.chosen = now.entries.find((entry) => entry.key === now.chosen?.key) ?? null;
   await drawChart(model, now.by, now.entries, now.chosen, now.cell);
   layTableNow();
   tellCounts(model);
   if (now.cell !== null) readCell(model, now.cell);
+}
+
+async function redraw() {
+  settle();
+  await draw();
 }
 
 /** Redraw before the next frame, once however many limits have moved. */

@@ -34,6 +34,7 @@ function exactEntry(model, candidate) {
     rank: candidate.rank,
     dates: candidate.dates,
     epochs: candidate.epochs,
+    refined: candidate.refined,
     cell: cellNear(model, candidate.epochs),
     value: (name) => candidate.values[name] ?? NaN,
   };

@@ -52,7 +52,17 @@ function readCell(model, cell) {
 function readChosen(model, entry) {
   byId("chosen").textContent = entry === null ? "Candidate" : entry.exact ? `Exact ${entry.rank}` : "From page";
   fillDates("chosen", entry?.dates);
+  tell("refined", refinedText(model.survey, entry?.refined ?? null, entry));
   fillReadings(model, "chosen", (name) => (entry === null ? NaN : entry.value(name)));
+}
+
+/** What the chosen candidate becomes when its dates are let off the grid, as the sweep found. */
+function refinedText(survey, refined, entry) {
+  if (refined === null) return "";
+  const measure = survey.columns.measures.find((each) => each.name === survey.rank.by);
+  const value = `${shown(refined.value, measure.digits)} ${unitText(measure.unit)}`.trim();
+  const note = refined.note === "" ? "" : ` (${refined.note})`;
+  return `Off the grid, candidate ${entry.rank} becomes ${refined.dates.join(" → ")}: ${measure.symbol} ${value}${note}.`;
 }
 
 /** What a candidate is called: by its rank in the survey, or as one of the page's cells. */
