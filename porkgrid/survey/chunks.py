@@ -16,7 +16,7 @@ import numpy as np
 from numcodecs import Blosc
 from zarr.codecs import BloscCodec, Crc32cCodec
 
-# Of those measured (tests/benchmarks/bench_compression.py) the fastest; others save a tenth of the disk.
+# Of those measured (tests/benchmarks/bench_compression.py) the fastest; others save a twentieth of the disk.
 _COMPRESSOR: Literal["lz4"] = "lz4"
 _LEVEL = 5
 _BLOSC = Blosc(cname=_COMPRESSOR, clevel=_LEVEL, shuffle=Blosc.SHUFFLE)

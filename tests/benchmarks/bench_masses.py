@@ -2,9 +2,9 @@
 
     python tests/benchmarks/bench_masses.py [dates a side] [rounds]
 
-The sweep of bench_sweep.py in this process (tiles, store, ranking; no figures): without masses; with a launcher
-and a spacecraft (injected and delivered mass, margin, propellant, spacecraft Δv, the limit of the table); with
-a stack of two stages.
+The sweep of bench_sweep.py in this process (tiles, store, ranking; no figures): without masses; with a
+launcher and a spacecraft (injected and delivered mass, margin, propellant, spacecraft Δv, the table's limit);
+with a stack of two stages.
 """
 
 from __future__ import annotations
