@@ -76,9 +76,10 @@ def _without_the_absent(text: str, path: Path) -> tuple[Draft, set[str]]:
         return draft, gone
     table, _ = parse_toml(text)
     names = {key.rpartition(".")[2].rpartition(", ")[2] for key in gone}
-    table["limits"] = {name: each for name, each in table.get("limits", {}).items() if name not in names}
-    if "measures" in table:
-        table["measures"] = [name for name in table["measures"] if name not in names]
+    if isinstance(limits := table.get("limits"), dict):
+        table["limits"] = {name: each for name, each in limits.items() if name not in names}
+    if isinstance(measures := table.get("measures"), list):
+        table["measures"] = [name for name in measures if name not in names]
     return draft_of(tomli_w.dumps(table), path, path.parent), gone
 
 

@@ -72,14 +72,15 @@ def sweep(
         begun = folders.claim(folder, scenario, fresh)
         provenance = folders.read_provenance(folder) if begun else _begin(folder, plan)
         plan = replace(plan, **provenance["tiles"])
-        missing = _missing(folder, plan)
+        entries = read_ledger(folder)
+        missing = _missing(folder, plan, entries)
         if missing and begun:
             _same_makers(folder, plan, provenance)
         with ThreadPoolExecutor(1) as aside:
             # reads the whole kernel: the tiles need not wait
             noted = aside.submit(_note_kernels, folder, plan, provenance)
             if missing:
-                _fill(folder, plan, missing, threads, cluster, report)
+                _fill(folder, plan, entries, missing, threads, cluster, report)
             noted.result()
         _finish(folder, plan, provenance)
     return open_survey(folder)
@@ -144,9 +145,8 @@ def _begin(folder: Path, plan: Plan) -> dict[str, Any]:
     return provenance
 
 
-def _missing(folder: Path, plan: Plan) -> list[Tile]:
+def _missing(folder: Path, plan: Plan, entries: dict[int, TileSums]) -> list[Tile]:
     """The tiles that are not on disk, or damaged there."""
-    entries = read_ledger(folder)
     damaged = set(damaged_tiles(folder, plan, entries))
     if damaged:
         log.warning(
@@ -159,6 +159,7 @@ def _missing(folder: Path, plan: Plan) -> list[Tile]:
 def _fill(
     folder: Path,
     plan: Plan,
+    entries: dict[int, TileSums],
     missing: list[Tile],
     workers: int,
     cluster: str | None,
@@ -168,7 +169,7 @@ def _fill(
     place = f"{workers} workers" if cluster is None else f"cluster {cluster}"
     log.info("%d of %d tiles to compute, %s", len(missing), len(plan.tiles), place)
     again = {tile.number for tile in missing}
-    there = [sums for number, sums in read_ledger(folder).items() if number not in again]
+    there = [sums for number, sums in entries.items() if number not in again]
     so_far, done = totals(there, plan.rank_sign), len(there)
     pace = Pace(plan, so_far)
     with ExitStack() as stack:

@@ -3,9 +3,8 @@
     python tests/benchmarks/bench_resume.py [tiles] [rounds]
 
 A process starts, finds out which tiles are sound, computes the first that is missing, and stops. The baseline
-is the same process in an empty folder: it makes the store, computes its first tile, and stops. Tiles are of
-64 cells,
-with the measures that four limits need, so that there are ten thousand without an hour's sweep.
+is the same process in an empty folder: it makes the store, computes its first tile, and stops. Tiles are of 64
+cells, with the measures that four limits need, so that there are ten thousand without an hour's sweep.
 """
 
 from __future__ import annotations
