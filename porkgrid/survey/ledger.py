@@ -12,7 +12,7 @@ import os
 import threading
 import time
 from collections import Counter
-from collections.abc import Iterable, Iterator
+from collections.abc import Iterable
 from contextlib import suppress
 from dataclasses import asdict
 from pathlib import Path
@@ -75,27 +75,33 @@ def read_ledger(folder: Path) -> dict[int, TileSums]:
 
 def tiles_in_doubt(folder: Path) -> list[int]:
     """Numbers of the tiles in the lines behind the last mark's, in the order in which they were entered."""
-    lines = list(_lines(folder))
-    kept = max((line[_MARK] for line in lines if isinstance(line.get(_MARK), int)), default=0)
+    lines = _lines(folder)
+    marks = (_read(line).get(_MARK) for line in lines if _MARK in line)
+    kept = max((mark for mark in marks if isinstance(mark, int)), default=0)
     return [sums.tile for sums in map(_entry, lines[kept:]) if sums is not None]
 
 
-def _lines(folder: Path) -> Iterator[dict[str, Any]]:
-    """What the whole lines hold, in order; nothing for a line that is blotted."""
+def _lines(folder: Path) -> list[str]:
+    """The whole lines, in order."""
     path = folder / LEDGER
     text = path.read_bytes().decode("latin-1") if path.exists() else ""  # blots too are text in this
-    for line in text.split("\n")[:-1]:
-        try:
-            read = json.loads(line)
-        except ValueError:
-            read = None
-        yield read if isinstance(read, dict) else {}
+    return text.split("\n")[:-1]
 
 
-def _entry(line: dict[str, Any]) -> TileSums | None:
-    """The tile of a line; None for a mark, or where a blot has left something else than a tile."""
+def _read(line: str) -> dict[str, Any]:
+    """What a line holds; nothing where it is blotted."""
     try:
-        sums = TileSums(**{**line, "sizes": tuple(line["sizes"])})
+        held = json.loads(line)
+    except ValueError:
+        return {}
+    return held if isinstance(held, dict) else {}
+
+
+def _entry(line: str) -> TileSums | None:
+    """The tile of a line; None for a mark, or where a blot has left something else than a tile."""
+    held = _read(line)
+    try:
+        sums = TileSums(**{**held, "sizes": tuple(held["sizes"])})
         counts = (sums.tile, sums.cells, sums.allowed, *sums.sizes)
         flags = (*sums.forbidden.values(), *sums.alone.values())
     except (TypeError, KeyError, AttributeError):

@@ -307,3 +307,19 @@ def test_figures_of_the_chosen_candidate_are_shown(visit, swept, page_of):
     tab.locator("#table tbody tr").nth(1).click()
     tab.wait_for_function("document.querySelectorAll('#figures img').length === 0")
     assert "--path 2" in tab.locator("#figured").text_content()
+
+
+def test_on_paper_the_page_is_light_and_the_chart_fits_and_the_screen_comes_back(tab):
+    tab.locator("#theme").select_option("dark")
+    settled(tab)
+    width = "() => document.querySelector('#chart .main-svg').clientWidth"
+    theme = "() => document.documentElement.dataset.theme"
+    on_screen = tab.evaluate(width)
+    tab.evaluate("() => { dispatchEvent(new Event('beforeprint')); }")
+    settled(tab)
+    assert tab.evaluate(theme) == "light"
+    assert tab.evaluate(width) == 980 != on_screen
+    tab.evaluate("() => { dispatchEvent(new Event('afterprint')); }")
+    settled(tab)
+    assert tab.evaluate(theme) == "dark"
+    assert tab.evaluate(width) == on_screen
