@@ -12,21 +12,21 @@ if TYPE_CHECKING:
     from porkgrid.errors import RequestError as RequestError
     from porkgrid.errors import RunError as RunError
     from porkgrid.physics.lambert import lambert as lambert
+    from porkgrid.reports.survey import Survey as Survey
+    from porkgrid.reports.survey import open_survey as open_survey
+    from porkgrid.reports.survey import sweep as sweep
     from porkgrid.scenario import Scenario as Scenario
     from porkgrid.survey.admit import load_scenario as load_scenario
-    from porkgrid.survey.surveys import Survey as Survey
-    from porkgrid.survey.surveys import open_survey as open_survey
-    from porkgrid.survey.sweep import sweep as sweep
 
 _HOMES = {
     "RequestError": "porkgrid.errors",
     "RunError": "porkgrid.errors",
     "Scenario": "porkgrid.scenario",
-    "Survey": "porkgrid.survey.surveys",
+    "Survey": "porkgrid.reports.survey",
     "lambert": "porkgrid.physics.lambert",
     "load_scenario": "porkgrid.survey.admit",
-    "open_survey": "porkgrid.survey.surveys",
-    "sweep": "porkgrid.survey.sweep",
+    "open_survey": "porkgrid.reports.survey",
+    "sweep": "porkgrid.reports.survey",
 }
 __all__ = [*_HOMES]
 

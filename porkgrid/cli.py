@@ -11,6 +11,7 @@ from porkgrid.commands.chart import chart
 from porkgrid.commands.compare import compare
 from porkgrid.commands.handoff import handoff
 from porkgrid.commands.listings import bodies, measures
+from porkgrid.commands.new import new
 from porkgrid.commands.page import page
 from porkgrid.commands.period import period
 from porkgrid.commands.rank import rank
@@ -27,7 +28,7 @@ app = typer.Typer(
     rich_markup_mode=None,
 )
 
-for _command in (sweep, chart, rank, period, slip, compare, handoff, page, check, bodies, measures):
+for _command in (new, sweep, chart, rank, period, slip, compare, handoff, page, check, bodies, measures):
     app.command()(_command)
 
 _INTERRUPTED = 130  # exit code

@@ -16,12 +16,13 @@ from rich import box
 from rich.console import Console
 from rich.table import Table
 
+from porkgrid.showing import number
+
 if TYPE_CHECKING:
     import pandas as pd
 
     from porkgrid.survey.progress import Progress
 
-_DIGITS = {"km/s": 3, "km²/s²": 2, "deg": 1, "days": 1, "au": 3, "1": 0, "kg": 0, "km": 0}
 _PLAIN_WIDTH = 1000  # columns of a table that does not go to a terminal
 
 
@@ -75,13 +76,6 @@ def _broken(name: str, width: int = 11) -> str:
             lines.append("")
         lines[-1] += word
     return "\n".join(lines)
-
-
-def number(value: float, unit: str) -> str:
-    """A measure as a table shows it."""
-    if value != value:
-        return "–"
-    return f"{value:.{_DIGITS.get(unit, 3)}f}"
 
 
 def candidate_rows(

@@ -14,14 +14,15 @@ import porkgrid
 
 PACKAGE = Path(porkgrid.__file__).parent
 
-# From the ground up. Rooms of one level do not see each other; errors are for all but physics.
+# From the ground up. Rooms of one level do not see each other; errors and showing are for all but physics.
 LEVELS = [
-    {"errors"},
+    {"errors", "showing"},
     {"physics"},
     {"sky"},
     {"scenario"},
     {"survey"},
     {"figures", "handoff", "page", "terminal"},
+    {"reports"},
     {"commands"},
     {"cli"},
 ]

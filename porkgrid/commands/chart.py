@@ -31,14 +31,10 @@ def chart(
 
     Example: porkgrid chart surveys/godwit-by-venus-to-mars-2034 --path 1 --flyby 1
     """
-    from porkgrid.figures import draw
     from porkgrid.survey.surveys import open_survey
 
-    opened, names = open_survey(survey), [each.value for each in formats]
-    drawn = draw.draw_path_of(opened, path, names) if path is not None else []
-    drawn += draw.draw_flybys_of(opened, flyby, names) if flyby is not None else []
-    if path is None and flyby is None:
-        drawn = draw.draw_figures(opened, of, lines, names)
-        drawn += draw.draw_flyby_maps(opened, names) if of is None and lines is None else []
-    for each in drawn:
+    opened = open_survey(survey)
+    from porkgrid.reports.charts import write_charts
+
+    for each in write_charts(opened, of, lines, path, flyby, [each.value for each in formats]):
         print(each)

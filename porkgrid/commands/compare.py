@@ -69,13 +69,11 @@ def compare_surveys(
     surveys: list[Survey], folder: Path, days: int, by: str | None, formats: list[Format], as_json: bool
 ) -> None:
     """Compare open surveys, print the table and the sentences, and write table and figure into `folder`."""
-    from porkgrid.figures.compare import draw_comparison
-    from porkgrid.figures.style import save_figure
+    from porkgrid.reports.comparisons import write_comparison
     from porkgrid.survey.compare import compare as lay_side_by_side
 
     comparison = lay_side_by_side(surveys, days, by)
-    files = _write_tables(comparison, folder)
-    files += save_figure(draw_comparison(comparison), folder / "comparison", [each.value for each in formats])
+    files = write_comparison(comparison, folder, [each.value for each in formats])
     if as_json:
         _print_json(comparison, files)
         return
@@ -95,21 +93,6 @@ def _folder(out: Path | None, slugs: list[str]) -> Path:
         raise RequestError(f"{folder}: is a file; give a folder with --out")
     folder.mkdir(parents=True, exist_ok=True)
     return folder
-
-
-def _write_tables(comparison: Comparison, folder: Path) -> list[Path]:
-    """Write comparison.csv, and the bi-elliptic transfer of every departure date."""
-    from porkgrid.survey.compare import comparison_table
-    from porkgrid.survey.folder import write_whole
-
-    tables = {"comparison.csv": comparison_table(comparison)}
-    for yardstick in comparison.yardsticks:
-        if yardstick.baselines:
-            ends = yardstick.route.lower().replace(" → ", "-").replace(" ", "-")
-            tables[f"bielliptic-{ends}.csv"] = yardstick.bielliptic
-    for name, table in tables.items():
-        write_whole(folder / name, table.to_csv(index=False))
-    return [folder / name for name in tables]
 
 
 def _print_table(comparison: Comparison) -> None:

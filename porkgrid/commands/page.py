@@ -3,12 +3,9 @@
 from __future__ import annotations
 
 from pathlib import Path
-from typing import TYPE_CHECKING, Annotated
+from typing import Annotated
 
 import typer
-
-if TYPE_CHECKING:
-    from porkgrid.page.opened import Opened
 
 
 def page(
@@ -33,21 +30,9 @@ def page(
     Example: porkgrid page surveys/godwit-by-venus-to-mars-2034 surveys/godwit-straight-to-mars-2035
     """
     from porkgrid import terminal
-    from porkgrid.errors import RequestError
-    from porkgrid.page.opened import open_for_page
-    from porkgrid.page.review import plotly_script, write_review
+    from porkgrid.reports.pages import write_page
 
-    plotly_script()  # refused before any work is done
-    target = (
-        out if out is not None else surveys[0] / "page.html" if len(surveys) == 1 else Path("review.html")
-    )
-    if target.is_dir():
-        raise RequestError(f"{target}: is a folder; give a file with --out")
-    opened = open_for_page(surveys)
-    for each in opened:
-        _draw(each, figures)
-    comparisons = sorted(path.parent for path in Path("comparisons").glob("*/comparison.csv"))
-    written = write_review(opened, comparisons, target)
+    opened, written = write_page(surveys, out, figures)
     for each, thinning in zip(opened, written.thinnings, strict=True):
         if each.missing:
             terminal.say(f"{each.survey.path}: half swept: {each.missing_share:.0%} of the cells are missing")
@@ -56,21 +41,3 @@ def page(
     if written.left_out:
         terminal.say(f"no room in the page for {', '.join(written.left_out)}")
     print(written.path)
-
-
-def _draw(opened: Opened, most: int) -> None:
-    """Draw the first candidates into the survey's folder, unless that was done since the ranking."""
-    from porkgrid.survey.folder import CANDIDATES, FIGURES
-
-    table = opened.survey.path / CANDIDATES
-    if opened.missing or not table.exists():
-        return
-    for number in range(1, min(most, len(opened.candidates)) + 1):
-        path = opened.survey.path / FIGURES / f"path-{number}.svg"
-        if path.exists() and path.stat().st_mtime >= table.stat().st_mtime:
-            continue
-        from porkgrid.figures.draw import draw_flybys_of, draw_path_of
-
-        draw_path_of(opened.survey, number, ["svg"])
-        if opened.survey.plan.flybys:
-            draw_flybys_of(opened.survey, number, ["svg"])

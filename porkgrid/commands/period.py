@@ -65,33 +65,15 @@ def period(
 
     opened = open_survey(survey)
     report = report_periods(opened, days, by, hold.value, gaps, keep)
-    files = _write(opened, report, [each.value for each in formats])
+    from porkgrid.reports.periods import write_periods  # the figures' libraries: not to refuse a request
+
+    files = write_periods(opened, report, [each.value for each in formats])
     if as_json:
         terminal.print_json(_document(opened, report, files))
     else:
         _print_report(opened, report)
     for path in files:
         terminal.say(str(path))
-
-
-def _write(survey: Survey, report: PeriodReport, formats: list[str]) -> list[Path]:
-    """Write the table and the figure; names say what is not as usual."""
-    import pandas as pd
-
-    from porkgrid.figures.period import draw_period
-    from porkgrid.figures.style import save_figure
-    from porkgrid.survey.folder import FIGURES, write_whole
-
-    best = report.periods[0]
-    parts = ["period", str(best.days)]
-    parts += [best.by] if best.by != survey.plan.rank_by else []
-    parts += [f"hold-{best.hold}"] if best.hold != Hold.NOTHING.value else []
-    parts += [f"gaps-{best.gap_days}"] if best.gap_days else []
-    table = survey.path / f"{'-'.join(parts)}.csv"
-    numbered = [each.table.assign(period=number) for number, each in enumerate(report.periods, start=1)]
-    rows = pd.concat(numbered)
-    write_whole(table, rows[["period", *numbered[0].columns[:-1]]].to_csv(index=False))
-    return [table, *save_figure(draw_period(survey, report), survey.path / FIGURES / table.stem, formats)]
 
 
 def _document(survey: Survey, report: PeriodReport, files: list[Path]) -> dict[str, Any]:

@@ -21,8 +21,8 @@ INSTALL = "pip install 'porkgrid[page]'"
 
 MOST_BYTES = 11_500_000  # of a page
 _FIGURE_BYTES = 2_500_000  # of those, for figures of all surveys together
-# What a page redraws within a tenth of a second in a browser, and what several surveys hold together
-_MOST_CELLS, _MOST_CELLS_IN_ALL = 125_000, 400_000
+# What a browser redraws within two tenths of a second, and what several surveys hold together
+_MOST_CELLS, _MOST_CELLS_IN_ALL = 100_000, 400_000
 _COARSER = 1.5  # how much fewer cells are tried where a page would grow too large
 _LEAST_CELLS = 1000  # fewer are no chart
 

@@ -292,6 +292,16 @@ def lambert(
         for shapes that do not broadcast, gm <= 0, revs < 0 or another branch.
 
     Source: Arora and Russell 2013, Russell 2022 (time equation); see the module's docstring.
+
+    Example
+    -------
+    A quarter of a circle of 1 au about the Sun takes a quarter of a year:
+
+    >>> au, gm_sun = 149597870.7, 132712440041.94
+    >>> quarter_s = math.pi / 2 * math.sqrt(au**3 / gm_sun)
+    >>> v1, v2 = porkgrid.lambert([au, 0, 0], [0, au, 0], quarter_s, gm_sun, pole=(0, 0, 1))
+    >>> v1.round(3).tolist(), v2.round(3).tolist()
+    ([0.0, 29.785, 0.0], [-29.785, 0.0, 0.0])
     """
     if not (math.isfinite(gm) and gm > 0.0):
         raise ValueError(f"gm must be positive and finite, in km³/s²; it is {gm!r}")

@@ -15,6 +15,7 @@ from porkgrid.scenario.bodies import BodySpec, body_of
 from porkgrid.scenario.faults import Fault
 from porkgrid.scenario.parts import Capture, Encounter, Flyby, Leg, Limit, Orbit, Parking, Rank
 from porkgrid.scenario.sections import Outline
+from porkgrid.scenario.showing import scenario_html, scenario_line
 from porkgrid.scenario.text import parse_toml, read_text
 from porkgrid.scenario.vehicles import Launcher, Spacecraft, Stack, Stage
 from porkgrid.sky.bodies import Body
@@ -54,7 +55,16 @@ def slug_of(name: str) -> str:
 
 
 class Scenario(BaseModel):
-    """A faultless request. It came from the file `path` with this `text`."""
+    """A faultless request. It came from the file `path` with this `text`.
+
+    Fields are the tables of the file under the same names, with the same units: dates of the TDB calendar,
+    steps in days, altitudes in km, masses in kg, limits in the unit that ends the measure's name. Encounters
+    stand in flying order. A scenario cannot be changed; write another file.
+
+    >>> scenario = porkgrid.load_scenario("scenarios/tern-to-mars.toml")
+    >>> scenario.encounters[0].body, scenario.encounters[0].step_days, scenario.limits["c3_km2_s2"].max
+    ('earth', 1.0, 25.0)
+    """
 
     model_config = ConfigDict(frozen=True)
 
@@ -75,13 +85,29 @@ class Scenario(BaseModel):
 
     @property
     def slug(self) -> str:
-        """The name as a folder has it: lower case, accents dropped, hyphens between words."""
+        """The name as a folder has it: lower case, accents dropped, hyphens between words.
+
+        >>> porkgrid.load_scenario("scenarios/tern-to-mars.toml").slug
+        'tern-to-mars'
+        """
         return slug_of(self.name)
 
     @property
     def own_bodies(self) -> dict[str, Body]:
-        """The bodies of the file's [bodies] tables, by name."""
+        """The bodies of the file's [bodies] tables, by name.
+
+        >>> porkgrid.load_scenario("scenarios/tern-to-mars.toml").own_bodies
+        {}
+        """
         return {name: body_of(name, spec) for name, spec in self.bodies.items()}
+
+    def __repr__(self) -> str:
+        return scenario_line(self)
+
+    __str__ = __repr__
+
+    def _repr_html_(self) -> str:
+        return scenario_html(self)
 
 
 @dataclass(frozen=True)

@@ -93,7 +93,9 @@ def _windows(table: Mapping[str, Any]) -> tuple[dict[str, dict[str, Any]], list[
 def _stop_faults(route: Route, number: int, windows: Mapping[str, Any]) -> Iterator[Fault]:
     for stop in route.stops:
         if stop.casefold() not in windows:
-            what = f'"{printable(stop)}" is no encounter of the file; {nearest(stop, windows)}'
+            what = (
+                f'"{printable(stop)}" is no encounter of the file; {nearest(stop, map(printable, windows))}'
+            )
             yield Fault(f"route {number}, stops", what)
 
 

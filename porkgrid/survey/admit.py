@@ -29,6 +29,9 @@ def load_scenario(path: str | Path, beside: Path | None = None) -> Scenario:
     """Read a scenario file the engine can sweep; relative kernel paths resolve from `beside` or the file.
 
     Raises RequestError with every fault of the file, each `FILE: KEY: what is wrong; what would be right`.
+
+    >>> porkgrid.load_scenario("scenarios/tern-to-mars.toml")
+    <Scenario 'Tern to Mars': earth → mars, 71 × 30 dates, 2 limits>
     """
     draft = read_scenario(path, beside)
     faults = [*draft.faults, *_engine_faults(draft)]

@@ -26,6 +26,7 @@ from porkgrid.survey.baselines import (
 from porkgrid.survey.candidates import rank_anew
 from porkgrid.survey.measures import BOTH, Measure
 from porkgrid.survey.period import LaunchPeriod, day_table, periods_in
+from porkgrid.survey.showing import comparison_html, comparison_line
 from porkgrid.survey.surveys import Survey
 from porkgrid.survey.view import better_sign
 
@@ -88,6 +89,12 @@ class Comparison:
         for entry in self.entries:
             found |= {name: each.unit for name, each in entry.survey.plan.measures.items()}
         return found
+
+    def __repr__(self) -> str:
+        return comparison_line(self)
+
+    def _repr_html_(self) -> str:
+        return comparison_html(self)
 
 
 def compare(surveys: Sequence[Survey], days: int = 21, by: str | None = None) -> Comparison:

@@ -7,6 +7,7 @@ import json
 import os
 import shutil
 from datetime import UTC, datetime
+from fnmatch import fnmatchcase
 from pathlib import Path
 from typing import Any
 
@@ -133,8 +134,9 @@ def refuse_foreign(folder: Path) -> None:
     foreign = [name for name in held if name not in (PROVENANCE + PART, LOCK, LOG)]
     if foreign and PROVENANCE not in held:
         raise RequestError(f"{folder}: holds other files ({foreign[0]}, …); give another folder with --out")
-    for name in (PROVENANCE, LOCK, LOG, *OURS):
-        if (folder / name).is_symlink():
+    patterns = (PROVENANCE, LOCK, LOG, f"*{PART}", *OURS)
+    for name in held:
+        if any(fnmatchcase(name, each) for each in patterns) and (folder / name).is_symlink():
             raise RequestError(
                 f"{folder / name}: is a link, and a sweep writes nowhere but in its own folder; "
                 "replace it by what it points to, or give another folder with --out"

@@ -31,6 +31,7 @@ from porkgrid.survey.departuredays import (
 )
 from porkgrid.survey.helddates import HeldDates, held_rows, hold_dates
 from porkgrid.survey.periodkernels import least_run_costs, run_costs
+from porkgrid.survey.showing import period_html, period_line
 from porkgrid.survey.store import BLOCKED_BY
 from porkgrid.survey.surveys import Survey
 from porkgrid.survey.view import better_sign
@@ -64,6 +65,12 @@ class LaunchPeriod:
     needs: tuple[Need, ...]
     flown: np.ndarray
     column: int
+
+    def __repr__(self) -> str:
+        return period_line(self)
+
+    def _repr_html_(self) -> str:
+        return period_html(self)
 
 
 @dataclass(frozen=True, eq=False)

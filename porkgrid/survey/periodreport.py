@@ -10,6 +10,7 @@ import pandas as pd
 from porkgrid.survey.growth import UP_TO_DAYS
 from porkgrid.survey.opportunities import Opportunity, holds_several, opportunities_in
 from porkgrid.survey.period import DayTable, LaunchPeriod, day_table, flights, least_worst, periods_in
+from porkgrid.survey.showing import report_html
 from porkgrid.survey.surveys import Survey
 
 _LEAST_NEIGHBOURS = 10
@@ -29,6 +30,12 @@ class PeriodReport:
     lengths: np.ndarray
     worst: np.ndarray
     opportunities: list[Opportunity]
+
+    def __repr__(self) -> str:
+        return f"<PeriodReport of {len(self.periods)}, the best {self.periods[0]!r}>"
+
+    def _repr_html_(self) -> str:
+        return report_html(self.periods)
 
 
 def report_periods(

@@ -30,6 +30,7 @@ from porkgrid.survey.pool import in_threads
 from porkgrid.survey.progress import Pace, Progress
 from porkgrid.survey.refine import refine, refined_table
 from porkgrid.survey.refinedtable import with_refined
+from porkgrid.survey.room import refuse_full_disk
 from porkgrid.survey.store import CAUTION, STORE, create_store, write_tile
 from porkgrid.survey.surveys import Survey, open_survey
 from porkgrid.survey.tiles import TileSums, compute_tile
@@ -70,6 +71,8 @@ def sweep(
         if dead:
             log.info("the sweep of %s ended without a word; going on from what it wrote", dead)
         begun = folders.claim(folder, scenario, fresh)
+        if not begun:
+            refuse_full_disk(folder, plan)
         provenance = folders.read_provenance(folder) if begun else _begin(folder, plan)
         plan = replace(plan, **provenance["tiles"])
         entries = read_ledger(folder)
@@ -81,6 +84,8 @@ def sweep(
             noted = aside.submit(_note_kernels, folder, plan, provenance)
             if missing:
                 _fill(folder, plan, entries, missing, threads, cluster, report)
+                if begun or cluster is not None:
+                    remove_parts(folder / STORE)
             noted.result()
         _finish(folder, plan, provenance)
     return open_survey(folder)
@@ -184,8 +189,6 @@ def _fill(
             progress = pace.progress(done, so_far)
             if report:
                 report(progress)
-    if len(there) > 0 or cluster is not None:
-        remove_parts(folder / STORE)
 
 
 def _on_threads(

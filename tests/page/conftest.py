@@ -113,6 +113,7 @@ def visit(chromium) -> Iterator[Callable[..., Any]]:
     """
     complaints: list[str] = []
     context = chromium.new_context(viewport={"width": 1400, "height": 900})
+    context.set_default_timeout(60_000)
 
     def open_page(path: Path) -> Any:
         tab = context.new_page()
@@ -130,3 +131,8 @@ def visit(chromium) -> Iterator[Callable[..., Any]]:
     yield open_page
     context.close()
     assert complaints == []
+
+
+@pytest.fixture
+def tab(visit, rook_page):
+    return visit(rook_page)

@@ -78,3 +78,9 @@ def set_limit(tab: Any, measure: str, end: str, value: float) -> None:
     box.fill(str(value))
     box.press("Enter")
     settled(tab)
+
+
+def stored(survey, name: str) -> np.ndarray:
+    """A stored variable as (departures, arrivals)."""
+    grid = survey.grid
+    return grid[name].broadcast_like(grid["blocked_by"]).transpose("departure", "arrival").values

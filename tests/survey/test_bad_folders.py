@@ -286,6 +286,7 @@ def test_a_scenarios_name_leads_to_no_folder_but_one_in_surveys(scenario_of, nam
 @pytest.mark.parametrize(
     "name",
     ["a b\t'q\" [bold]x[/bold] {0} %s # ? * → é 😀", "-dash", "new\nline", os.fsdecode(b"latin-\xe9")],
+    ids=["signs", "dash", "two lines", "no utf-8"],
 )
 def test_a_folder_may_have_any_name(run, tmp_path, name):
     folder = tmp_path / name

@@ -12,7 +12,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from porkgrid.survey import chunks
-from porkgrid.survey.chunks import codecs, encode, is_whole, size_of, write_chunk
+from porkgrid.survey.chunks import codecs, encode, is_whole, remove_parts, size_of, write_chunk
 
 SHAPE, CHUNKS = (7, 11), (3, 4)  # neither side is a multiple: the last chunks stick out of the grid
 KINDS = {np.float32: np.nan, np.float64: np.nan, np.uint32: 0xFFFFFFFF}
@@ -217,6 +217,16 @@ def test_a_reader_finds_the_old_or_the_new_chunk_and_nothing_between(one):
     stop.set()
     reader.join()
     assert seen <= {content, new}
+
+
+def test_parts_that_killed_writers_have_left_are_removed_and_nothing_else(one, tmp_path):
+    _, path, _ = one
+    before = files(tmp_path)
+    for number in (17, 4711):
+        path.with_name(f".2.{number}.part").write_bytes(b"half")
+    path.with_name(".3.9.part").write_bytes(b"")
+    remove_parts(tmp_path)
+    assert files(tmp_path) == before
 
 
 def test_threads_that_make_the_same_folders_do_not_hinder_each_other(tmp_path):

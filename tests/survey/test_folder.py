@@ -264,7 +264,18 @@ def test_a_survey_of_another_format_is_refused_and_both_are_named(tmp_path, made
 # Links that lead out of the folder
 
 
-@pytest.mark.parametrize("name", ["grid.zarr", "figures", "candidates.csv", "tiles.jsonl", "survey.json"])
+LINKS = [
+    "grid.zarr",
+    "figures",
+    "tiles.jsonl",
+    "survey.json",
+    "candidates.csv.part",
+    "period-9.csv",
+    "sweep.log",
+]
+
+
+@pytest.mark.parametrize("name", LINKS)
 @pytest.mark.parametrize("fresh", [False, True])
 def test_a_link_in_the_folder_is_refused_and_what_it_leads_to_is_left(
     folder, scenario, tmp_path, name, fresh

@@ -56,9 +56,10 @@ def finish(process: subprocess.Popen[str]) -> tuple[int, str]:
 
 
 def entries(folder: Path) -> list[bytes]:
-    """The whole lines of the ledger."""
+    """The lines of the ledger that are of tiles, not marks of what the disk has been asked to keep."""
     ledger = folder / "tiles.jsonl"
-    return ledger.read_bytes().splitlines() if ledger.exists() else []
+    lines = ledger.read_bytes().splitlines() if ledger.exists() else []
+    return [line for line in lines if b'"tile"' in line and b'"sizes"' in line]
 
 
 def stop_when(process: subprocess.Popen[str], folder: Path, tiles: int, number: signal.Signals) -> None:

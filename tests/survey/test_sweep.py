@@ -47,8 +47,8 @@ def assert_same_survey(one, other):
 def test_a_sweep_leaves_the_folder_of_the_design(survey):
     names = {path.name for path in survey.path.iterdir()}
     assert names == {
-        "scenario.toml", "survey.json", "grid.zarr", "candidates.csv", "figures", "tiles.jsonl", "sweep.log",
-        "sweep.lock",
+        "scenario.toml", "survey.json", "grid.zarr", "candidates.csv", "figures", "tiles.jsonl",
+        "refined.csv", "sweep.log", "sweep.lock",
     }  # fmt: skip
     assert (survey.path / "scenario.toml").read_text() == ROOK
 
@@ -108,6 +108,16 @@ def test_a_finished_sweep_is_not_computed_again(scenario, whole, tmp_path, monke
     again = sweep(scenario, tmp_path, 1)
     assert (tmp_path / "survey.json").read_bytes() == before
     assert_same_survey(again.path, whole.path)
+
+
+def test_what_a_killed_process_has_left_half_written_is_removed_even_if_no_tile_was_done(
+    scenario, whole, tmp_path
+):
+    with pytest.raises(KeyboardInterrupt):
+        sweep(scenario, tmp_path, 1, report=stop_after(1, KeyboardInterrupt))
+    (tmp_path / "tiles.jsonl").unlink()
+    (tmp_path / "grid.zarr" / "c3_km2_s2" / "c" / "0" / ".1.4711.part").write_bytes(b"half")
+    assert_same_survey(sweep(scenario, tmp_path, 1).path, whole.path)
 
 
 def test_a_fresh_sweep_is_computed_again(scenario, whole, tmp_path):

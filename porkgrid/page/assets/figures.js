@@ -24,9 +24,10 @@ async function showFigures(model, entry) {
 }
 
 function figuredText(survey, entry, count) {
-  const with_figures = Object.keys(survey.figures);
-  const have = with_figures.length
-    ? `Exact candidates with figures in this page: ${with_figures.join(", ")}.`
+  if (survey.missing !== null) return "Paths and flybys are drawn when the sweep is finished.";
+  const drawn = Object.keys(survey.figures);
+  const have = drawn.length
+    ? `Exact candidates with figures in this page: ${drawn.join(", ")}.`
     : "No candidate has figures in this page.";
   if (count) return have;
   if (entry === null) return `Choose a candidate in the table or in the chart. ${have}`;
