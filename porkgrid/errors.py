@@ -14,7 +14,7 @@ class RequestError(Exception):
     ...     porkgrid.open_survey("surveys")
     ... except porkgrid.RequestError as error:
     ...     print(error)
-    surveys: not a survey folder (it has no survey.json)
+    surveys: not a survey folder: it has no survey.json; `porkgrid sweep` makes one
     """
 
     def __init__(self, *faults: str) -> None:

@@ -4,6 +4,8 @@ from __future__ import annotations
 
 import signal
 import threading
+from collections.abc import Iterator
+from contextlib import contextmanager
 from importlib import import_module
 from pathlib import Path
 from typing import TYPE_CHECKING, Annotated, Any
@@ -12,7 +14,9 @@ import typer
 
 from porkgrid.commands.arguments import AsJson, Format, Formats, ScenarioFile, bytes_of
 from porkgrid.commands.compare import compare_surveys
+from porkgrid.commands.compiling import said_if_compiling
 from porkgrid.commands.rank import print_candidates
+from porkgrid.commands.schema import print_schema
 from porkgrid.errors import RequestError
 
 if TYPE_CHECKING:
@@ -57,17 +61,16 @@ def sweep(
 
     # the figures' libraries load while kernels run, which leave Python alone
     threading.Thread(target=import_module, args=("porkgrid.figures.draw",)).start()
-    signal.signal(signal.SIGTERM, signal.default_int_handler)  # as Ctrl-C: the tiles in hand are saved
     folders = [folder_of(requests[0], out)] if len(requests) == 1 else _folders(scenario, requests, out)
     for folder in folders:
         refuse_foreign(folder)  # before the kernels are compiled for nothing
-    _compile(lambda: engine.warm_up(make_plan(requests[0])))
+    said_if_compiling(lambda: engine.warm_up(make_plan(requests[0])))
     flown: dict[Any, Any] = {}  # legs that the routes of a campaign share
     surveys = []
     for request, folder in zip(requests, folders, strict=True):
         if len(requests) > 1:
             terminal.say(request.name)
-        with terminal.sweep_progress(as_json) as report:
+        with terminal.sweep_progress(as_json) as report, _terminated_as_interrupted():
             survey = engine.sweep(
                 request, folder, workers, fresh=fresh, memory_bytes=budget, cluster=cluster, flown=flown,
                 report=report,
@@ -76,6 +79,16 @@ def sweep(
         surveys.append(survey)
     if len(surveys) > 1:
         compare_surveys(surveys, folders[0].parent, _CAMPAIGN_DAYS, None, formats, as_json)
+
+
+@contextmanager
+def _terminated_as_interrupted() -> Iterator[None]:
+    """Take SIGTERM as Ctrl-C while a sweep runs: the tiles in hand are saved."""
+    before = signal.signal(signal.SIGTERM, signal.default_int_handler)
+    try:
+        yield
+    finally:
+        signal.signal(signal.SIGTERM, before)
 
 
 def _folders(scenario: Path, requests: list[Scenario], out: Path | None) -> list[Path]:
@@ -87,11 +100,26 @@ def _folders(scenario: Path, requests: list[Scenario], out: Path | None) -> list
     return [place / slug_of(request.name.rpartition(": ")[2]) for request in requests]
 
 
-def check(scenario: ScenarioFile, as_json: AsJson = False) -> None:
+def check(
+    scenario: Annotated[
+        Path | None, typer.Argument(metavar="[SCENARIO]", help="Scenario file (TOML).")
+    ] = None,
+    schema: Annotated[
+        bool, typer.Option("--schema", help="Print the JSON Schema of scenario files, for editors.")
+    ] = False,
+    as_json: AsJson = False,
+) -> None:
     """Validate a scenario and say what a sweep would cost on this machine.
 
     Example: porkgrid check scenarios/earth-mars-2028.toml
+
+    Example: porkgrid check --schema > scenario.schema.json
     """
+    if schema:
+        print_schema()
+        return
+    if scenario is None:
+        raise RequestError("check: give a scenario file, or --schema for what one may hold")
     from porkgrid.survey.admit import load_routes
 
     requests = load_routes(scenario)
@@ -103,7 +131,7 @@ def check(scenario: ScenarioFile, as_json: AsJson = False) -> None:
     from porkgrid.survey.sweep import warm_up
 
     plans = [make_plan(request) for request in requests]
-    _compile(lambda: warm_up(plans[0]))
+    said_if_compiling(lambda: warm_up(plans[0]))
     costs = [predict(plan) for plan in plans]
     if as_json:
         told = [
@@ -171,20 +199,6 @@ def _tell(survey: Survey, drawn: list[Path], as_json: bool) -> None:
     if survey.plan.flybys:
         terminal.say(f"flyby maps: porkgrid chart {survey.path}; a candidate's: with --path 1 --flyby 1")
     terminal.say(f"survey in {survey.path}")
-
-
-def _compile(warm_up: Any) -> None:
-    """Have the kernels ready; say so where that takes a while, as on the first run on a machine."""
-    from porkgrid import terminal
-
-    timer = threading.Timer(
-        3.0, terminal.say, ["compiling the kernels for this machine (once, under a minute) …"]
-    )
-    timer.start()
-    try:
-        warm_up()
-    finally:
-        timer.cancel()
 
 
 def _duration(seconds: float) -> str:

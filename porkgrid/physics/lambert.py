@@ -300,8 +300,8 @@ def lambert(
     >>> au, gm_sun = 149597870.7, 132712440041.94
     >>> quarter_s = math.pi / 2 * math.sqrt(au**3 / gm_sun)
     >>> v1, v2 = porkgrid.lambert([au, 0, 0], [0, au, 0], quarter_s, gm_sun, pole=(0, 0, 1))
-    >>> v1.round(3).tolist(), v2.round(3).tolist()
-    ([0.0, 29.785, 0.0], [-29.785, 0.0, 0.0])
+    >>> v1.round(3) + 0.0, v2.round(3) + 0.0
+    (array([ 0.   , 29.785,  0.   ]), array([-29.785,   0.   ,   0.   ]))
     """
     if not (math.isfinite(gm) and gm > 0.0):
         raise ValueError(f"gm must be positive and finite, in km³/s²; it is {gm!r}")

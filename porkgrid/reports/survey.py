@@ -113,7 +113,7 @@ class Survey(surveys.Survey):
         such period exists.
 
         >>> best = survey.period(days=10).periods[0]
-        >>> best.worst == best.table["dv_total_km_s"].max(), best.days
+        >>> best.worst == float(best.table["dv_total_km_s"].max()), best.days
         (True, 10)
         """
         from porkgrid.survey.periodreport import report_periods

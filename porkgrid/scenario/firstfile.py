@@ -74,8 +74,8 @@ def _head(proposal: Proposal, request: str, file: str) -> list[str]:
         "#",
         *_comment(
             f"The least total Δv that the coarse survey found: {least.dv_total_km_s:.2f} km/s on {dates}, "
-            f"with C3 {least.c3_km2_s2:.1f} km²/s², arrival v∞ {least.v_inf_arrival_km_s:.2f} km/s and a flight "
-            f"of {least.tof_days:.0f} days."
+            f"with C3 {least.c3_km2_s2:.1f} km²/s², arrival v∞ {least.v_inf_arrival_km_s:.2f} km/s and a "
+            f"flight of {least.tof_days:.0f} days."
         ),
         "",
     ]
@@ -85,11 +85,13 @@ def _departure(proposal: Proposal) -> list[str]:
     window = proposal.windows[0]
     first, last = proposal.closing
     tilt = "Give inclination_deg = 28.5 as well, and the burn pays for asymptotes that such a plane misses."
+    why = (
+        "here seasons run into each other, and the window holds about one."
+        if proposal.cut
+        else "the window reaches past both, so that the chart shows how the season closes on either side."
+    )
     return [
-        *_comment(
-            f"Departure. The limits below allow departures from {first} to {last}; the window reaches past "
-            "both, so that the chart shows how the season closes on either side."
-        ),
+        *_comment(f"Departure. The limits below allow departures from {first} to {last}; {why}"),
         *_encounter(window),
         *_comment(f"{_sentence(PARKING[window.body])} {tilt if window.body == 'earth' else ''}"),
         _orbit("parking", PARKING[window.body]),
@@ -104,9 +106,9 @@ def _flybys(proposal: Proposal) -> list[str]:
         altitude = BODIES[window.body].min_flyby_altitude_km
         lines += [
             *_comment(
-                f"Flyby {number}. On a grid of dates no flyby matches exactly: max_burn_km_s is what the grid "
-                f"may miss it by, and counts in dv_total_km_s. At the optimum it was {burn:.2f} km/s. The "
-                f"altitude is the least that is usual at {_title(window)}."
+                f"Flyby {number}. On a grid of dates no flyby matches exactly: max_burn_km_s is what the "
+                f"grid may miss it by, and counts in dv_total_km_s. At the optimum it was {burn:.2f} km/s. "
+                f"Its altitude is the least that is usual at {_title(window)}."
             ),
             *_encounter(window),
             f"flyby = {{ min_altitude_km = {altitude:.0f}, max_burn_km_s = {most:g} }}",
@@ -141,8 +143,8 @@ def _limits(proposal: Proposal) -> list[str]:
     )
     return [
         *_comment(
-            f"What is allowed: as much as dates take whose total Δv is within {proposal.slack_km_s:.2f} km/s of "
-            "the least. What the launcher, the tanks and the mission's duration really allow goes here."
+            f"What is allowed: as much as dates take whose total Δv is within {proposal.slack_km_s:.2f} km/s "
+            "of the least. What the launcher, the tanks and the mission's duration really allow goes here."
         ),
         "[limits]",
         f"c3_km2_s2 = {{ max = {limits.c3_km2_s2:g} }}  # {least.c3_km2_s2:.1f} at the least total Δv",

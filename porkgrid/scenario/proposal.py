@@ -52,6 +52,7 @@ class Proposal:
     slack_km_s: float  # the limits let in every date whose total is that near the least
     closing: tuple[date, date]  # first and last departure that the limits allow
     seasons: tuple[date, ...]
+    cut: bool  # the season goes on beyond the windows: seasons run into each other
     synodic_days: float | None  # None for a route with flybys, whose seasons have no one period
 
     @property

@@ -104,6 +104,7 @@ def _closer(orbits: Sequence[OrbitSize], found: _Found, ephemeris: Ephemeris) ->
         slack_km_s=slack,
         closing=season.closing,
         seasons=(),
+        cut=season.cut,
         synodic_days=synodic_days(orbits[0], orbits[1]) if len(orbits) == 2 else None,
     )
 

@@ -51,7 +51,7 @@ class Survey:
 
         >>> c3 = survey.grid["c3_km2_s2"]
         >>> c3.dims, c3.shape, c3.attrs["units"]
-        (('departure', 'arrival'), (71, 30), 'km2 s-2')
+        (('departure', 'arrival'), (71, 30), 'km²/s²')
         """
         dates = self.provenance["grid"]
         shape = dates["departure_dates"], dates["arrival_dates"]
@@ -68,7 +68,7 @@ class Survey:
         """
         path = self.path / CANDIDATES
         try:
-            table = pd.read_csv(path)
+            table = pd.read_csv(path, dtype={"refined_note": "str"}).fillna({"refined_note": ""})
         except (OSError, ValueError) as error:  # of a parser, of a decoder
             raise RequestError(f"{path}: cannot be read: {error}; {_RANK_AGAIN}") from None
         if "rank" not in table:

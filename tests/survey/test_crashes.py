@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import json
-import os
 import random
 import shutil
 import signal
@@ -11,7 +10,7 @@ import subprocess
 import sys
 import time
 from collections.abc import Callable, Iterator
-from contextlib import contextmanager
+from contextlib import contextmanager, suppress
 from pathlib import Path
 
 import pytest
@@ -23,7 +22,6 @@ from survey_scenarios import LOOPS, changed, written
 MANY = changed(LOOPS, ("18.0", "1.8"), ("23.0", "5.0"), ("[[leg]]", "[rank]\nkeep = 5\n\n[[leg]]"))
 MANY = 'measures = ["leg1_revs", "leg1_branch"]\n' + MANY
 TILES = 39
-ROOM = 250_000  # bytes: for the empty store and some tiles, not for all
 
 
 def tiles_done(folder: Path) -> int:
@@ -276,22 +274,31 @@ def mounted(folder: Path, options: str) -> Iterator[None]:
         subprocess.run(["umount", "--lazy", str(folder)], check=True)
 
 
+def fill(path: Path) -> None:
+    """Write a file as large as the disk allows."""
+    with suppress(OSError), path.open("wb", buffering=0) as file:
+        while True:
+            file.write(b"\0" * 4096)
+
+
 @pytest.mark.skipif(sys.platform != "linux", reason="mounts are made as Linux makes them")
 def test_a_disk_that_fills_up_in_the_middle_is_said_and_the_sweep_goes_on_when_there_is_room(
     nursery, swept, scenario, whole, tmp_path
 ):
-    with mounted(tmp_path / "disk", "size=4m"):
+    with mounted(tmp_path / "disk", "size=16m"):
         folder, ballast = tmp_path / "disk" / "survey", tmp_path / "disk" / "ballast"
-        free = os.statvfs(tmp_path / "disk")
-        ballast.write_bytes(b"\0" * (free.f_bavail * free.f_bsize - ROOM))
         child = nursery.sweep(scenario, folder, 2)
+        wait_for(lambda: tiles_done(folder) > 3, child)
+        child.send(signal.SIGSTOP)
+        fill(ballast)
+        child.send(signal.SIGCONT)
         said = child.wait()
-        assert child.returncode == 1
+        assert child.returncode == 1, said
         assert said == (
             f"RunError: {folder}: the disk is full; free some space and give the same command again: "
             "the tiles already written are kept\n"
         )
-        assert 0 < tiles_done(folder) < TILES
+        assert 3 < tiles_done(folder) < TILES
         assert not [path for path in folder.rglob("*.part") if path.parent != folder]
         assert json.loads((folder / "survey.json").read_text())["state"] == "running"
         ballast.unlink()
@@ -311,7 +318,7 @@ def test_a_disk_that_is_read_only_is_said_to_be_and_what_is_there_is_left(
         subprocess.run(["mount", "-o", "remount,ro", str(tmp_path / "disk")], check=True)
         child = nursery.command("sweep", scenario, "--out", folder)
         said = child.wait()
-        assert child.returncode == 1
+        assert child.returncode == 1, said
         assert said == f"porkgrid: {folder}: no permission to write there; give another folder with --out\n"
         subprocess.run(["mount", "-o", "remount,rw", str(tmp_path / "disk")], check=True)
         swept(scenario, folder, 2)
