@@ -184,14 +184,15 @@ def test_a_folder_that_may_not_be_written_to_is_said_to_be_so(tmp_path):
 
 @pytest.mark.usefixtures("mounts")
 @pytest.mark.parametrize("size", [pytest.param("24k", marks=pytest.mark.slow), "300k"])
-def test_a_full_disk_is_said_to_be_full_and_nothing_half_written_counts(tmp_path, size):
-    """Too small for the empty store, and for its tiles."""
+def test_a_disk_too_small_for_the_survey_is_told_before_it_is_begun(tmp_path, size):
+    """Too small for the empty store, and for its tiles; for one that fills meanwhile see test_crashes.py."""
     folder, saved = tmp_path / "full", tmp_path / "saved"
     folder.mkdir()
     sweep = command("sweep", written(tmp_path, ROOK), "--out", folder / "survey")
     again = f'{sweep}; code=$?; cp -r "{folder}/survey" "{saved}"; exit $code'
     result = in_mount(folder, f"size={size}", again)
-    assert_refused(result, 1, f"{folder}/survey: the disk is full; free some space")
+    assert_refused(result, 2, f"{folder}/survey: the survey takes about ")
+    assert not (saved / "grid.zarr").exists()
     assert not (saved / "candidates.csv").exists()
     if (saved / "survey.json").exists():
         assert read_provenance(saved)["state"] != "complete"

@@ -87,7 +87,9 @@ def test_examples_do_what_they_show(survey, name):
 def test_the_public_names_are_those_of_the_design():
     names = {"Scenario", "Survey", "lambert", "load_scenario", "open_survey", "sweep"}
     assert names | {"RequestError", "RunError"} == set(porkgrid.__all__)
-    assert {f"Survey.{each}" for each in ("grid", "candidates", "chart", "rank", "period")} <= DOCUMENTED.keys()
+    assert {
+        f"Survey.{each}" for each in ("grid", "candidates", "chart", "rank", "period")
+    } <= DOCUMENTED.keys()
 
 
 def test_every_public_callable_types_all_it_takes_and_returns():

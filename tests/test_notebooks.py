@@ -66,4 +66,6 @@ def _told(output: nbformat.NotebookNode) -> str:
     """All that an output holds as text, with the kinds of what it holds."""
     if output.output_type == "stream":
         return str(output.text)
-    return "\n".join(f"{kind}\n{'' if kind.startswith('image') else data}" for kind, data in output.data.items())
+    return "\n".join(
+        f"{kind}\n{'' if kind.startswith('image') else data}" for kind, data in output.data.items()
+    )

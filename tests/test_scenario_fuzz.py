@@ -253,7 +253,7 @@ def fates(folder: Path, seeds: range) -> Counter[str]:
 
 
 def test_hundreds_of_mutants_are_admitted_or_refused(folder):
-    count = fates(folder, range(250))
+    count = fates(folder, range(200))
     assert min(count["planned"], count["refused"]) > 30  # neither all broken nor all unharmed
 
 
@@ -302,7 +302,7 @@ def agree(path: Path, exit_code: Callable[..., int]) -> None:
         assert exit_code("measures", path) in (0, 2)  # 2: a campaign of several routes
 
 
-@pytest.mark.parametrize("seed", range(500, 520))
+@pytest.mark.parametrize("seed", range(500, 512))
 def test_the_command_line_ends_with_0_or_2(folder, exit_code, seed):
     agree(mutant(folder, seed), exit_code)
 

@@ -7,14 +7,23 @@ from typing import Annotated
 import typer
 
 from porkgrid.commands.arguments import Format, Formats, SurveyFolder
+from porkgrid.commands.completing import measure_names
 
 
 def chart(
     survey: SurveyFolder,
     of: Annotated[
-        str | None, typer.Option(help="Measure shown as colour; by default the rank measure.")
+        str | None,
+        typer.Option(
+            metavar="MEASURE",
+            help="Measure shown as colour; by default the rank measure.",
+            autocompletion=measure_names,
+        ),
     ] = None,
-    lines: Annotated[str | None, typer.Option(help="Measure shown as lines.")] = None,
+    lines: Annotated[
+        str | None,
+        typer.Option(metavar="MEASURE", help="Measure shown as lines.", autocompletion=measure_names),
+    ] = None,
     path: Annotated[
         int | None, typer.Option(metavar="N", help="Draw the path of candidate N instead.")
     ] = None,

@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING, Annotated, Any
 import typer
 
 from porkgrid.commands.arguments import AsJson, Format, Formats
+from porkgrid.commands.completing import measure_names
 from porkgrid.errors import RequestError
 
 if TYPE_CHECKING:
@@ -44,7 +45,12 @@ def compare(
     ],
     days: Annotated[int, typer.Option(help="Length of the launch periods, in days.")] = 21,
     by: Annotated[
-        str | None, typer.Option(metavar="MEASURE", help="Measure to rank by; by default each survey's own.")
+        str | None,
+        typer.Option(
+            metavar="MEASURE",
+            help="Measure to rank by; by default each survey's own.",
+            autocompletion=measure_names,
+        ),
     ] = None,
     out: Annotated[
         Path | None, typer.Option(help="Folder to write to; by default comparisons/<names joined>.")

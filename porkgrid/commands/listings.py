@@ -11,7 +11,10 @@ from porkgrid.commands.arguments import AsJson
 
 
 def bodies(as_json: AsJson = False) -> None:
-    """List the bodies that scenarios can name."""
+    """List the bodies that scenarios can name.
+
+    Example: porkgrid bodies
+    """
     from porkgrid import terminal
     from porkgrid.sky.bodies import BODIES
 
@@ -35,11 +38,14 @@ def bodies(as_json: AsJson = False) -> None:
 
 def measures(
     scenario: Annotated[
-        Path | None, typer.Argument(metavar="[SCENARIO]", help="Only those that this scenario's route has.")
+        Path | None, typer.Argument(metavar="SCENARIO", help="Only those that this scenario's route has.")
     ] = None,
     as_json: AsJson = False,
 ) -> None:
-    """List the measures: the numbers of a cell that can be limited, ranked by, drawn and stored."""
+    """List the measures: the numbers of a cell that can be limited, ranked by, drawn and stored.
+
+    Example: porkgrid measures scenarios/earth-venus-mars-2034.toml
+    """
     from porkgrid import terminal
     from porkgrid.survey.measures import all_entries
 

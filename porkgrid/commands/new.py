@@ -10,6 +10,7 @@ from typing import TYPE_CHECKING, Annotated
 import typer
 
 from porkgrid.commands.compiling import said_if_compiling
+from porkgrid.commands.completing import body_names
 from porkgrid.errors import RequestError
 
 if TYPE_CHECKING:
@@ -17,11 +18,18 @@ if TYPE_CHECKING:
 
 
 def new(
-    origin: Annotated[str, typer.Argument(metavar="FROM", help="Body to leave, such as earth.")],
-    target: Annotated[str, typer.Argument(metavar="TO", help="Body to reach, such as mars.")],
+    origin: Annotated[
+        str, typer.Argument(metavar="FROM", help="Body to leave, such as earth.", autocompletion=body_names)
+    ],
+    target: Annotated[
+        str, typer.Argument(metavar="TO", help="Body to reach, such as mars.", autocompletion=body_names)
+    ],
     year: Annotated[int, typer.Option(help="Year to leave in.")],
     by: Annotated[
-        list[str] | None, typer.Option(metavar="BODY", help="Body to fly by on the way; again for more.")
+        list[str] | None,
+        typer.Option(
+            metavar="BODY", help="Body to fly by on the way; again for more.", autocompletion=body_names
+        ),
     ] = None,
     out: Annotated[
         Path | None, typer.Option(metavar="FILE", help="File to write; by default FROM-TO-YEAR.toml here.")

@@ -27,7 +27,7 @@ def page(
 
     Example: porkgrid page surveys/ouzel-to-mars-2028
 
-    Example: porkgrid page surveys/godwit-by-venus-to-mars-2034 surveys/godwit-straight-to-mars-2035
+    Example: porkgrid page surveys/godwit-*
     """
     from porkgrid import terminal
     from porkgrid.reports.pages import write_page

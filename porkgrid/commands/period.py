@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING, Annotated, Any
 import typer
 
 from porkgrid.commands.arguments import AsJson, Format, Formats, SurveyFolder
+from porkgrid.commands.completing import measure_names
 
 if TYPE_CHECKING:
     from pathlib import Path
@@ -40,7 +41,12 @@ def period(
     survey: SurveyFolder,
     days: Annotated[int, typer.Option(help="How many days the period has.")] = 21,
     by: Annotated[
-        str | None, typer.Option(help="Measure whose worst day counts; by default the scenario's.")
+        str | None,
+        typer.Option(
+            metavar="MEASURE",
+            help="Measure whose worst day counts; by default the scenario's.",
+            autocompletion=measure_names,
+        ),
     ] = None,
     hold: Annotated[
         Hold, typer.Option(help="Kept over the days: nothing, one arrival date, or all dates but departure.")

@@ -7,6 +7,7 @@ from typing import TYPE_CHECKING, Annotated, Any
 import typer
 
 from porkgrid.commands.arguments import AsJson, Format, Formats, Order, SurveyFolder
+from porkgrid.commands.completing import measure_names
 from porkgrid.errors import RequestError
 
 if TYPE_CHECKING:
@@ -21,7 +22,14 @@ _SHOWN_PER_FLYBY = ("_altitude_km", "_burn_km_s")
 
 def rank(
     survey: SurveyFolder,
-    by: Annotated[str | None, typer.Option(help="Measure to rank by; by default the scenario's.")] = None,
+    by: Annotated[
+        str | None,
+        typer.Option(
+            metavar="MEASURE",
+            help="Measure to rank by; by default the scenario's.",
+            autocompletion=measure_names,
+        ),
+    ] = None,
     order: Annotated[
         Order | None, typer.Option(help="Which end is better; by default the scenario's.")
     ] = None,
@@ -34,6 +42,7 @@ def rank(
         typer.Option(
             metavar="MEASURE",
             help="Show what no other dates beat in both the rank measure and this one; twice for two.",
+            autocompletion=measure_names,
         ),
     ] = None,
     formats: Formats = [Format.PNG],  # noqa: B006 - typer wants a list

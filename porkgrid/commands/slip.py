@@ -7,6 +7,7 @@ from typing import TYPE_CHECKING, Annotated, Any
 import typer
 
 from porkgrid.commands.arguments import AsJson, SurveyFolder
+from porkgrid.commands.completing import measure_names
 
 if TYPE_CHECKING:
     from porkgrid.survey.surveys import Survey
@@ -14,7 +15,14 @@ if TYPE_CHECKING:
 
 def slip(
     survey: SurveyFolder,
-    by: Annotated[str | None, typer.Option(help="Measure of the cost; by default the scenario's.")] = None,
+    by: Annotated[
+        str | None,
+        typer.Option(
+            metavar="MEASURE",
+            help="Measure of the cost; by default the scenario's.",
+            autocompletion=measure_names,
+        ),
+    ] = None,
     as_json: AsJson = False,
 ) -> None:
     """Say what leaving 1, 5, 10 and 20 days late costs each candidate, and the last day that can be flown.

@@ -101,9 +101,7 @@ def _folders(scenario: Path, requests: list[Scenario], out: Path | None) -> list
 
 
 def check(
-    scenario: Annotated[
-        Path | None, typer.Argument(metavar="[SCENARIO]", help="Scenario file (TOML).")
-    ] = None,
+    scenario: Annotated[Path | None, typer.Argument(metavar="SCENARIO", help="Scenario file (TOML).")] = None,
     schema: Annotated[
         bool, typer.Option("--schema", help="Print the JSON Schema of scenario files, for editors.")
     ] = False,

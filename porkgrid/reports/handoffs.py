@@ -23,9 +23,11 @@ from porkgrid.handoff.report import FullForceReport
 from porkgrid.handoff.sunpath import sun_path
 from porkgrid.handoff.targets import write_targets
 from porkgrid.handoff.trajectory import Trajectory
+from porkgrid.showing import html_line, html_page, html_table
 from porkgrid.survey.candidates import Picked, measures_at
 from porkgrid.survey.pictures import Number, flyby_picture, route_picture
 from porkgrid.survey.sightlines import sightlines
+from porkgrid.survey.store import CAUTION
 from porkgrid.survey.surveys import Survey
 
 _CHECKED = ("c3_km2_s2", "rla_deg", "dla_deg", "v_inf_arrival_km_s", "dv_total_km_s")  # on the sheet
@@ -46,7 +48,19 @@ class HandOff:
     left_out: tuple[str, ...]
 
     def __repr__(self) -> str:
-        return f"<HandOff {self.report.verdict}: {len(self.files)} files in {self.folder}>"
+        return f"<HandOff {self.report.verdict}: {len(self.files)} files in {str(self.folder)!r}>"
+
+    def _repr_html_(self) -> str:
+        lines = [checkfiles.shown(line) for line in self.report.lines]
+        misses = ", ".join(f"{miss:.2g}" for miss in self.report.miss_km)
+        return html_page(
+            f"Full-force check: {self.report.verdict}",
+            *map(html_line, self.report.reasons),
+            html_table(["", "patched", "full force", "difference", "unit"], lines),
+            html_line(f"miss at the end of each leg: {misses} km; {len(self.files)} files in {self.folder}"),
+            html_line(f"Thresholds. {self.report.thresholds}."),
+            html_line(CAUTION),
+        )
 
 
 @dataclass(frozen=True, eq=False)

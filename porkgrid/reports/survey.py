@@ -30,7 +30,7 @@ class Survey(surveys.Survey):
 
     >>> survey = porkgrid.open_survey("surveys/tern-to-mars")
     >>> survey
-    <Survey 'Tern to Mars': Earth → Mars, in surveys/tern-to-mars>
+    <Survey 'Tern to Mars': Earth → Mars, in 'surveys/tern-to-mars'>
     """
 
     def chart(

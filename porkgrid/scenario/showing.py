@@ -35,7 +35,7 @@ def scenario_html(scenario: Scenario) -> str:
         html_table(
             ["encounter", "", "first", "last", "step, days", "dates"],
             [_encounter(each) for each in scenario.encounters],
-            left=2,
+            left=4,
         ),
         html_table(["limit", "min", "max"], limits) if limits else html_line("no limits"),
         *map(html_line, lines),

@@ -35,9 +35,13 @@ def refuse_full_disk(folder: Path, plan: Plan) -> None:
         f"{1.05 * factor * each.step_days:.2g}" for each in plan.scenario.encounters[:: len(plan.tables) - 1]
     )
     raise RequestError(
-        f"{folder}: the survey takes about {needed / 1e9:.1f} GB, and {free / 1e9:.1f} GB are free there; "
+        f"{folder}: the survey takes about {_size(needed)}, and {_size(free)} are free there; "
         f"steps of {steps} days, fewer measures in the scenario, or a folder elsewhere (--out) would fit"
     )
+
+
+def _size(count: float) -> str:
+    return f"{count / 1e9:.1f} GB" if count >= 1e9 else f"{count / 1e6:.2f} MB"
 
 
 def _compressed_bytes(plan: Plan) -> float:

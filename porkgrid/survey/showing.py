@@ -2,21 +2,23 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+import re
+from collections.abc import Iterable, Sequence
 from typing import TYPE_CHECKING
 
 import pandas as pd
 
-from porkgrid.showing import html_line, html_page, html_table, number
+from porkgrid.showing import html_line, html_page, html_table, number, unit_of
+from porkgrid.survey.folder import COMPLETE
 from porkgrid.survey.store import CAUTION
 
 if TYPE_CHECKING:
     from porkgrid.survey.compare import Comparison
     from porkgrid.survey.period import LaunchPeriod
-    from porkgrid.survey.plan import Plan
     from porkgrid.survey.surveys import Survey
 
 _CANDIDATES, _DAYS = 5, 40  # rows shown; the tables themselves have all
+_STOP = re.compile(r"departure|flyby\d+|arrival")  # columns of ISO dates
 # Of a candidate and of a period's days, where the route has them and they are no flyby's
 _SHOWN = (
     "tof_days",
@@ -35,22 +37,24 @@ _SHOWN = (
 def survey_line(survey: Survey) -> str:
     """One line: name, route and where it lies."""
     facts = survey.provenance
-    return f"<Survey {facts.get('name')!r}: {facts.get('route', 'not begun')}, in {survey.path}>"
+    return f"<Survey {facts.get('name')!r}: {facts.get('route', 'not begun')}, in {str(survey.path)!r}>"
 
 
 def survey_html(survey: Survey) -> str:
-    """What was swept, how much of it is allowed, and the first candidates."""
-    facts, plan = survey.provenance, survey.plan
-    rows, columns = plan.shape
-    share = facts["cells_allowed"] / facts["cells"]
-    table = survey.candidates
+    """What was swept, how much of it is allowed, and the first candidates; from the folder alone."""
+    facts = survey.provenance
+    title = f"{facts['name']}: {facts.get('route', 'not begun')}"
+    if facts["state"] != COMPLETE:
+        return html_page(title, html_line("the sweep is not finished"))
+    table, cells, allowed = survey.candidates, facts["cells"], facts["cells_allowed"]
+    by = str(survey.grid.attrs["rank_by"])
     return html_page(
-        f"{facts['name']}: {facts['route']}",
+        title,
         html_line(
-            f"{rows:,} departure × {columns:,} arrival dates; {facts['cells_allowed']:,} of "
-            f"{facts['cells']:,} cells are allowed ({share:.1%})"
+            f"{facts['grid']['departure_dates']:,} departure × {facts['grid']['arrival_dates']:,} arrival dates; "
+            f"{allowed:,} of {cells:,} cells are allowed ({allowed / cells:.1%}), {len(table)} candidates by {by}"
         ),
-        _flights(plan, table.head(_CANDIDATES), plan.rank_by, f"best of {len(table)} candidates"),
+        _flights(table.head(_CANDIDATES), ["rank"], (by, *_SHOWN)),
         html_line(CAUTION),
     )
 
@@ -65,33 +69,26 @@ def period_line(period: LaunchPeriod) -> str:
 
 def period_html(period: LaunchPeriod) -> str:
     """What the period asks of launcher and spacecraft, and its days."""
-    needs = [[each.name, number(each.worst, each.unit), each.unit, each.on] for each in period.needs]
-    units = {each.name: each.unit for each in period.needs}
-    days, dates = period.table, [name for name in period.table.columns if not _is_measure(name)]
-    names = [name for name in dict.fromkeys((*_SHOWN, period.by, period.margin)) if name in days]
-    rows = [
-        [*(str(row[name]) for name in dates), *(number(row[name], units.get(name, "")) for name in names)]
-        for _, row in days.head(_DAYS).iterrows()
-    ]
-    left_out = len(days) - len(rows)
+    needs = [[each.name, each.on, number(each.worst, each.unit), each.unit] for each in period.needs]
+    left_out = len(period.table) - _DAYS
     return html_page(
         f"Launch period of {period.days} days by {period.by}: {period.first} to {period.last}",
-        html_table(["required", "worst", "unit", "on"], needs),
-        html_table([*dates, *names], rows, left=len(dates)),
-        html_line(f"and {left_out} days more") if left_out else "",
+        html_table(["required", "on", "worst", "unit"], needs, left=2),
+        _flights(period.table.head(_DAYS), [], (*_SHOWN, period.by, period.margin)),
+        html_line(f"and {left_out} days more") if left_out > 0 else "",
     )
 
 
 def report_html(periods: Sequence[LaunchPeriod]) -> str:
-    """The best of some periods, and the others as a table."""
+    """The best of some periods, and where there are others all of them as a table."""
     best = periods[0]
-    unit = {each.name: each.unit for each in best.needs}.get(best.by, "")
     rows = [
-        [str(place), each.first, each.last, number(each.worst, unit), each.worst_on]
+        [str(place), each.first, each.last, each.worst_on, number(each.worst, unit_of(best.by))]
         for place, each in enumerate(periods, start=1)
     ]
-    headings = ["#", "first", "last", f"worst {best.by}", "on"]
-    return period_html(best) + html_table(headings, rows, "Distinct periods", left=3)
+    headings = ["#", "first", "last", "worst day", best.by]
+    others = html_table(headings, rows, "Distinct periods", left=4) if len(periods) > 1 else ""
+    return period_html(best) + others
 
 
 def comparison_line(comparison: Comparison) -> str:
@@ -104,13 +101,13 @@ def comparison_html(comparison: Comparison) -> str:
     """Routes and their baselines as columns, and what one saves against another."""
     from porkgrid.survey.compare import comparison_table
 
-    table, units = comparison_table(comparison), comparison.units
-    texts = [name for name in ("route", "ranked_by", "departure", "arrival") if name in table]
-    flybys = [name for name in units if name.startswith("flyby") and name.endswith("_burn_km_s")]
-    names = [name for name in (*_SHOWN, *flybys) if name in table and table[name].notna().any()]
-    rows = [[name, *table[name].fillna("–").astype(str)] for name in texts]
-    rows += [[name, *(number(float(value), units[name]) for value in table[name])] for name in names]
-    rows += [["period of", *_periods(comparison, len(table))]]
+    table = comparison_table(comparison)
+    burns = [name for name in table if name.startswith("flyby") and name.endswith("_burn_km_s")]
+    names = [name for name in (*_SHOWN, *burns) if name in table and table[name].notna().any()]
+    rows = [[name, *table[name].fillna("–").astype(str)] for name in ("route", "ranked_by")]
+    rows += [[name, *table[name].fillna("–").astype(str).str[:10]] for name in ("departure", "arrival")]
+    rows += [[name, *(number(float(value), unit_of(name)) for value in table[name])] for name in names]
+    rows += [[f"{comparison.days} days", *_periods(comparison, len(table))]]
     return html_page(
         "Routes side by side",
         html_table(["", *map(str, table["name"])], rows),
@@ -120,32 +117,22 @@ def comparison_html(comparison: Comparison) -> str:
 
 def _periods(comparison: Comparison, columns: int) -> list[str]:
     said = [
-        each.no_period
-        if each.period is None
-        else f"{comparison.days} days: {each.period.first} to {each.period.last}"
+        each.no_period if each.period is None else f"{each.period.first} to {each.period.last}"
         for each in comparison.entries
     ]
     return said + ["–"] * (columns - len(said))
 
 
-def _flights(plan: Plan, table: pd.DataFrame, by: str, title: str) -> str:
-    """Rows of a candidates' table: rank, dates of all encounters, and what one looks at first."""
-    from porkgrid.survey.candidates import stops_of
-
-    units = {name: measure.unit for name, measure in plan.measures.items()}
-    dates = stops_of(plan)
-    names = [name for name in dict.fromkeys((by, *_SHOWN)) if name in table and name in units]
+def _flights(table: pd.DataFrame, numbering: list[str], measures: Iterable[str]) -> str:
+    """Rows of a table of flights: numbering, dates of all encounters, and those of the measures it has."""
+    stops = [name for name in table if _STOP.fullmatch(str(name))]
+    names = [name for name in dict.fromkeys(measures) if name in table]
     rows = [
         [
-            str(row["rank"]),
-            *(str(row[name]) for name in dates),
-            *(number(row[name], units[name]) for name in names),
+            *(str(row[name]) for name in (*numbering, *stops)),
+            *(number(float(row[name]), unit_of(name)) for name in names),
         ]
         for _, row in table.iterrows()
     ]
-    return html_table(["#", *dates, *names], rows, title, left=1 + len(dates))
-
-
-def _is_measure(name: str) -> bool:
-    """Whether a column of a day table is a number; encounters' dates have no unit in their names."""
-    return "_" in name
+    fixed = [*numbering, *map(str, stops)]
+    return html_table([*fixed, *names], rows, left=len(fixed))

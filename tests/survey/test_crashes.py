@@ -120,7 +120,7 @@ def check_kills(nursery, swept, scenario: Path, whole: Path, folder: Path, seed:
     assert lines_of_log(folder).count("ended without a word") <= hits
 
 
-@pytest.mark.parametrize("seed", [1, 2, 3])
+@pytest.mark.parametrize("seed", [1, 2])
 def test_a_sweep_killed_at_random_moments_ends_as_one_that_never_was(
     nursery, swept, scenario, whole, tmp_path, seed
 ):

@@ -32,7 +32,7 @@ def test_compression_counts(rook, free, tmp_path):
 def test_what_would_fit_is_said_and_nothing_is_begun(scenario_of, free, tmp_path):
     free(50_000.0)
     with pytest.raises(
-        RequestError, match=r"the survey takes about .* GB, and .* GB are free there; steps of "
+        RequestError, match=r"the survey takes about .* MB, and 0.05 MB are free there; steps of "
     ):
         sweep(scenario_of(ROOK), tmp_path / "survey")
     assert not (tmp_path / "survey" / "grid.zarr").exists()
