@@ -17,7 +17,7 @@ NOTEBOOKS = sorted(FOLDER.glob("*.ipynb"))
 SHOWN = {
     "01-direct-survey": (
         "cells are allowed", "image/png", "it alone", "Tern to Venus, 2031: Earth → Venus",
-        "the nearest is 'venus'", "dv_total_km_s",
+        'did you mean "venus"?', "the nearest is 'dv_total_km_s'",
     ),
     "02-flyby-or-direct": (
         "Earth → Venus → Mars", "Routes side by side", "Hohmann floor", "image/png",

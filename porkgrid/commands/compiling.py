@@ -11,11 +11,12 @@ T = TypeVar("T")
 _PATIENCE_S = 3.0
 
 
-def said_if_compiling(work: Callable[[], T]) -> T:
+def said_if_compiling(
+    work: Callable[[], T], message: str = "compiling the kernels for this machine (once, under a minute) …"
+) -> T:
     """Do what may have to compile kernels first; say so where it takes a while."""
     from porkgrid import terminal
 
-    message = "compiling the kernels for this machine (once, under a minute) …"
     timer = threading.Timer(_PATIENCE_S, terminal.say, [message])
     timer.start()
     try:

@@ -15,9 +15,10 @@ _NUMBERS = (
 
 def measure_names(ctx: typer.Context, incomplete: str) -> list[str]:
     """Measures that begin so: those that the survey on the command line stores, else all there are."""
-    given = ctx.params.get("survey"); import sys; print(ctx.params, file=sys.stderr)
-    names = _stored(Path(given)) if given is not None else []
-    return [name for name in names or _all_names() if name.startswith(incomplete)]
+    # while the value of an option is being typed the parser leaves all words in args
+    words = [ctx.params.get("survey"), *ctx.args]
+    names = next((found for word in words if word and (found := _stored(Path(word)))), _all_names())
+    return [name for name in names if name.startswith(incomplete)]
 
 
 def body_names(incomplete: str) -> list[str]:

@@ -55,7 +55,8 @@ def new(
     from porkgrid.scenario.firstfile import first_name, scenario_text, season_words, season_year
     from porkgrid.survey.suggest import suggest
 
-    proposal = said_if_compiling(lambda: suggest(route, year))
+    looking = "looking for the season; the first run on a machine compiles the kernels, under a minute …"
+    proposal = said_if_compiling(lambda: suggest(route, year), looking)
     bodies = [body.name for body in route]
     file = out if out is not None else Path("-".join([*bodies, f"{season_year(proposal)}.toml"]))
     _refuse_taken(file, fresh)

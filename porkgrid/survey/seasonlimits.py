@@ -57,7 +57,8 @@ def season_around(
     allowed = rows & _within(seen, limits)
     first, last = _run_about(allowed.any(axis=1), best)
     allowed[:first], allowed[last + 1 :] = False, False
-    edges = (allowed[0], allowed[-1], allowed[:, 0], allowed[:, -1])
+    reach = np.flatnonzero(rows)
+    edges = (allowed[reach[0]], allowed[reach[-1]], allowed[:, 0], allowed[:, -1])
     return Season(
         windows=_wide_windows(orbits, seen, allowed, ephemeris),
         limits=limits,

@@ -46,13 +46,14 @@ def survey_html(survey: Survey) -> str:
     title = f"{facts['name']}: {facts.get('route', 'not begun')}"
     if facts["state"] != COMPLETE:
         return html_page(title, html_line("the sweep is not finished"))
-    table, cells, allowed = survey.candidates, facts["cells"], facts["cells_allowed"]
-    by = str(survey.grid.attrs["rank_by"])
+    table, grid = survey.candidates, facts["grid"]
+    by, allowed = str(survey.grid.attrs["rank_by"]), facts["cells_allowed"]
     return html_page(
         title,
         html_line(
-            f"{facts['grid']['departure_dates']:,} departure × {facts['grid']['arrival_dates']:,} arrival dates; "
-            f"{allowed:,} of {cells:,} cells are allowed ({allowed / cells:.1%}), {len(table)} candidates by {by}"
+            f"{grid['departure_dates']:,} departure × {grid['arrival_dates']:,} arrival dates; "
+            f"{allowed:,} of {facts['cells']:,} cells are allowed ({allowed / facts['cells']:.1%}), "
+            f"{len(table)} candidates by {by}"
         ),
         _flights(table.head(_CANDIDATES), ["rank"], (by, *_SHOWN)),
         html_line(CAUTION),
@@ -102,7 +103,8 @@ def comparison_html(comparison: Comparison) -> str:
     from porkgrid.survey.compare import comparison_table
 
     table = comparison_table(comparison)
-    burns = [name for name in table if name.startswith("flyby") and name.endswith("_burn_km_s")]
+    columns = map(str, table.columns)
+    burns = [name for name in columns if name.startswith("flyby") and name.endswith("_burn_km_s")]
     names = [name for name in (*_SHOWN, *burns) if name in table and table[name].notna().any()]
     rows = [[name, *table[name].fillna("–").astype(str)] for name in ("route", "ranked_by")]
     rows += [[name, *table[name].fillna("–").astype(str).str[:10]] for name in ("departure", "arrival")]
@@ -125,7 +127,7 @@ def _periods(comparison: Comparison, columns: int) -> list[str]:
 
 def _flights(table: pd.DataFrame, numbering: list[str], measures: Iterable[str]) -> str:
     """Rows of a table of flights: numbering, dates of all encounters, and those of the measures it has."""
-    stops = [name for name in table if _STOP.fullmatch(str(name))]
+    stops = [name for name in map(str, table.columns) if _STOP.fullmatch(name)]
     names = [name for name in dict.fromkeys(measures) if name in table]
     rows = [
         [
@@ -134,5 +136,4 @@ def _flights(table: pd.DataFrame, numbering: list[str], measures: Iterable[str])
         ]
         for _, row in table.iterrows()
     ]
-    fixed = [*numbering, *map(str, stops)]
-    return html_table([*fixed, *names], rows, left=len(fixed))
+    return html_table([*numbering, *stops, *names], rows, left=len(numbering) + len(stops))

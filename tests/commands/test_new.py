@@ -5,8 +5,12 @@ from __future__ import annotations
 import json
 import subprocess
 import sys
+from pathlib import Path
 
 import pytest
+
+from porkgrid.commands.new import new
+from porkgrid.errors import RequestError
 
 
 def porkgrid(*arguments, folder) -> subprocess.CompletedProcess:
@@ -82,31 +86,34 @@ def test_a_route_by_venus_has_a_flyby(written):
 
 
 @pytest.mark.parametrize(
-    ("arguments", "message"),
+    ("bodies", "options", "message"),
     [
-        (["erth", "mars"], 'erth: no body of this name; did you mean "earth"?'),
-        (["earth", "mrs"], 'mrs: no body of this name; did you mean "mars"?'),
-        (["earth", "vulcan-7"], "valid here: mercury, venus"),
-        (["sun", "mars"], "sun: is what routes go round"),
-        (["earth", "moon"], "moon: goes round the Earth"),
-        (["mars", "mars"], "mars: a leg from a body to itself"),
-        (["earth", "mars", "--by", "mars"], "mars: a leg from a body to itself"),
-        (["earth", "mars", "--name", "…"], "--name: name: must have a letter or digit"),
-        (["earth", "mars", "--out", "nowhere/a.toml"], "nowhere/a.toml: there is no folder nowhere"),
-        (["earth", "mars", "--out", "."], ".: is a folder"),
+        (["erth", "mars"], {}, 'erth: no body of this name; did you mean "earth"?'),
+        (["earth", "mrs"], {}, 'mrs: no body of this name; did you mean "mars"?'),
+        (["earth", "vulcan-7"], {}, "valid here: mercury, venus"),
+        (["sun", "mars"], {}, "sun: is what routes go round"),
+        (["earth", "moon"], {}, "moon: goes round the Earth"),
+        (["mars", "mars"], {}, "mars: a leg from a body to itself"),
+        (["earth", "mars"], {"by": ["mars"]}, "mars: a leg from a body to itself"),
+        (["earth", "mars"], {"by": ["venus", "vnus"]}, 'vnus: no body of this name; did you mean "venus"?'),
+        (["earth", "mars"], {"name": "…"}, "--name: name: must have a letter or digit"),
+        (["earth", "mars"], {"out": Path("nowhere/a.toml")}, "nowhere/a.toml: there is no folder nowhere"),
+        (["earth", "mars"], {"out": Path()}, ".: is a folder"),
     ],
-    ids=lambda each: each if isinstance(each, str) else " ".join(each),
 )
-def test_what_it_cannot_do_is_refused_and_nothing_is_written(arguments, message, tmp_path):
-    run = porkgrid("new", *arguments, "--year", "2031", folder=tmp_path)
-    assert run.returncode == 2
-    assert message in run.stderr
+def test_what_it_cannot_do_is_refused_and_nothing_is_written(bodies, options, message, tmp_path, monkeypatch):
+    monkeypatch.chdir(tmp_path)
+    with pytest.raises(RequestError) as refused:
+        new(*bodies, year=2031, **options)
+    assert message in str(refused.value)
     assert list(tmp_path.iterdir()) == []
 
 
-def test_both_wrong_bodies_are_told_at_once(tmp_path):
+def test_all_wrong_bodies_are_told_at_once_with_exit_code_2(tmp_path):
     run = porkgrid("new", "erth", "moon", "--year", "2031", folder=tmp_path)
-    assert len(run.stderr.splitlines()) == 2
+    assert run.returncode == 2
+    told = [line.split(":")[:2] for line in run.stderr.splitlines()]
+    assert told == [["porkgrid", " erth"], ["porkgrid", " moon"]]
 
 
 def test_a_refusal_does_not_load_the_engine(tmp_path):
