@@ -13,6 +13,8 @@ from survey_scenarios import ROOK, changed, written
 from porkgrid.survey.admit import load_scenario
 from porkgrid.survey.sweep import sweep
 
+pytestmark = pytest.mark.slow
+
 
 @pytest.fixture(scope="module")
 def folders(tmp_path_factory) -> list[Path]:

@@ -71,7 +71,13 @@ def survey(tmp_path_factory):
         )
 
 
-@pytest.mark.parametrize("name", DOCUMENTED)
+@pytest.mark.parametrize(
+    "name",
+    [
+        pytest.param(name, marks=pytest.mark.slow) if name in ("Survey.handoff", "Survey.chart") else name
+        for name in DOCUMENTED
+    ],
+)
 def test_examples_do_what_they_show(survey, name):
     member = DOCUMENTED[name]
     text = inspect.getdoc(getattr(member, "func", member) if not inspect.isclass(member) else member)

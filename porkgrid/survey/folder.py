@@ -155,6 +155,7 @@ def claim(folder: Path, scenario: Scenario, fresh: bool) -> bool:
             _same_scenario(folder, scenario)
             if read_provenance(folder)["state"] != CLAIMED:
                 return True
+    folder.mkdir(parents=True, exist_ok=True)
     write_provenance(folder, _first_provenance(scenario))
     _clear(folder)
     (folder / FIGURES).mkdir()

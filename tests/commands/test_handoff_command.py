@@ -68,6 +68,7 @@ def test_the_dates_are_those_of_the_refined_candidate(first, rook):
     assert epochs == pytest.approx([row["departure_epoch_jd_tdb"], row["arrival_epoch_jd_tdb"]], abs=1e-4)
 
 
+@pytest.mark.slow
 def test_dates_that_the_analyst_brings_are_flown_as_they_are(rook, capsys):
     command.handoff(rook.path, dates="2028-11-25,2029-09-25T12:00", as_json=True)
     printed = json.loads(capsys.readouterr().out)
@@ -103,6 +104,7 @@ def test_what_cannot_be_handed_off_is_refused(rook, asked, told):
         command.handoff(rook.path, **{"candidate": None, "dates": None} | asked)
 
 
+@pytest.mark.slow
 def test_a_place_that_cannot_be_written_leaves_nothing_half_written(rook, monkeypatch):
     def full(*_: object) -> None:
         raise OSError(28, "No space left on device")
@@ -114,6 +116,7 @@ def test_a_place_that_cannot_be_written_leaves_nothing_half_written(rook, monkey
     assert not list((rook.path / "handoff").glob(".*"))
 
 
+@pytest.mark.slow
 def test_without_spiceypy_the_kernel_is_skipped_and_that_is_said(rook, monkeypatch, capsys):
     import sys
 

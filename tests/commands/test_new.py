@@ -34,6 +34,7 @@ def test_the_file_is_written_here_and_named_on_standard_output(written):
     assert (folder / "earth-mars-2033.toml").exists()
 
 
+@pytest.mark.slow
 def test_check_finds_the_file_valid(written):
     folder, _ = written
     run = porkgrid("check", "earth-mars-2033.toml", folder=folder)
@@ -41,6 +42,7 @@ def test_check_finds_the_file_valid(written):
     assert "Earth to Mars, 2033" in run.stdout
 
 
+@pytest.mark.slow
 def test_a_sweep_of_the_file_has_candidates(written):
     folder, _ = written
     run = porkgrid("sweep", "earth-mars-2033.toml", "--json", folder=folder)
@@ -51,6 +53,7 @@ def test_a_sweep_of_the_file_has_candidates(written):
     assert told["candidates"][0]["departure"].startswith("2033-04")
 
 
+@pytest.mark.slow
 def test_a_file_that_is_there_is_replaced_only_when_asked_for(written):
     folder, _ = written
     file = folder / "mine.toml"
@@ -65,6 +68,7 @@ def test_a_file_that_is_there_is_replaced_only_when_asked_for(written):
     assert 'name = "Siskin to Venus"' in file.read_text()
 
 
+@pytest.mark.slow
 def test_a_name_that_needs_escapes_in_toml_survives(written):
     folder, _ = written
     name = 'Siskin "two" \\ to Vénus'
@@ -75,6 +79,7 @@ def test_a_name_that_needs_escapes_in_toml_survives(written):
     assert json.loads(run.stdout)["name"] == name
 
 
+@pytest.mark.slow
 def test_a_route_by_venus_has_a_flyby(written):
     folder, _ = written
     run = porkgrid("new", "earth", "mars", "--by", "venus", "--year", "2034", folder=folder)

@@ -12,6 +12,8 @@ from survey_scenarios import ROOK, changed, limited, written
 from porkgrid.survey.admit import load_scenario
 from porkgrid.survey.sweep import sweep
 
+pytestmark = pytest.mark.slow
+
 DAILY = changed(
     ROOK,
     (

@@ -150,6 +150,7 @@ def test_orbits_much_larger_than_the_flight_do_not_shrink_it() -> None:
     assert np.ptp(whole.path[0]) / AU_KM > np.ptp(pole.get_xlim())
 
 
+@pytest.mark.slow
 def test_a_route_too_long_for_the_column_says_how_much_is_left_out(
     placed_texts: Callable, overlapping: Callable
 ) -> None:

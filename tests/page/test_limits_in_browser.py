@@ -9,7 +9,7 @@ from review_tab import drawn, rows, set_limit, settled, stored
 from porkgrid.survey.candidates import epoch_names
 from porkgrid.survey.rank import distinct, local_bests
 
-pytestmark = pytest.mark.browser
+pytestmark = [pytest.mark.browser, pytest.mark.slow]
 
 
 @pytest.mark.parametrize("most", [14.0, 25.0, 60.0], ids=["tighter", "the same", "looser"])

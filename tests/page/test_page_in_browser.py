@@ -13,7 +13,7 @@ from survey_scenarios import ROOK
 from porkgrid.figures.draw import draw_path_of
 from porkgrid.survey.ledger import read_ledger
 
-pytestmark = pytest.mark.browser
+pytestmark = [pytest.mark.browser, pytest.mark.slow]
 
 
 @pytest.mark.parametrize(("i", "j"), [(0, 0), (20, 30), (42, 58)])

@@ -146,6 +146,7 @@ def seasons_scenario(folder: Path, step_days: float) -> Path:
     return written(folder, text)
 
 
+@pytest.mark.slow
 def test_seasons_come_every_26_months_in_a_survey_of_fifteen_years(tmp_path):
     path = seasons_scenario(tmp_path, step_days=6.0)
     survey = sweep(load_scenario(path), tmp_path / "survey")

@@ -10,7 +10,7 @@ import pytest
 
 from porkgrid.errors import RequestError
 from porkgrid.scenario import Scenario
-from porkgrid.survey.admit import load_scenario
+from porkgrid.survey.admit import load_routes, load_scenario
 
 SCENARIOS = Path(__file__).parents[2] / "scenarios"
 
@@ -95,9 +95,9 @@ def changed(old: str, new: str) -> str:
 
 @pytest.mark.parametrize("path", sorted(SCENARIOS.glob("*.toml")), ids=lambda path: path.stem)
 def test_the_scenarios_that_come_along_are_admitted(path):
-    scenario = load_scenario(path)
-    assert scenario.description
-    assert scenario.rank.by
+    for scenario in load_routes(path):
+        assert scenario.description
+        assert scenario.rank.by
 
 
 def test_the_scenario_of_many_seasons_is_about_thirty_million_cells():

@@ -20,6 +20,7 @@ from survey_scenarios import LEAN, ROOK, changed, shrink_tiles, written
 from porkgrid import RequestError, open_survey
 from porkgrid.cli import main
 from porkgrid.survey.admit import load_scenario
+from porkgrid.survey.logbook import log
 from porkgrid.survey.store import create_store
 from porkgrid.survey.surveys import Survey
 from porkgrid.survey.sweep import sweep
@@ -288,7 +289,8 @@ def test_a_scenarios_name_leads_to_no_folder_but_one_in_surveys(scenario_of, nam
     ["a b\t'q\" [bold]x[/bold] {0} %s # ? * → é 😀", "-dash", "new\nline", os.fsdecode(b"latin-\xe9")],
     ids=["signs", "dash", "two lines", "no utf-8"],
 )
-def test_a_folder_may_have_any_name(run, tmp_path, name):
+def test_a_folder_may_have_any_name(run, tmp_path, name, monkeypatch):
+    monkeypatch.setattr(log, "propagate", False)  # pytest-xdist sends what is captured, as UTF-8
     folder = tmp_path / name
     given = load_scenario(written(tmp_path / f"given {name}", LEAN))
     first = sweep(given, folder, workers=1)

@@ -19,7 +19,7 @@ from porkgrid.survey.admit import load_scenario
 from porkgrid.survey.sweep import sweep
 
 distributed = pytest.importorskip("distributed")
-pytestmark = pytest.mark.xdist_group("cluster")
+pytestmark = [pytest.mark.xdist_group("cluster"), pytest.mark.slow]
 
 
 def started(arguments: list[str]) -> subprocess.Popen[bytes]:

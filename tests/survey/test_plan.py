@@ -6,7 +6,6 @@ from hypothesis import given
 from hypothesis import strategies as st
 from survey_scenarios import LOOPS, PETREL, changed, limited
 
-from porkgrid.survey import plan as plans
 from porkgrid.survey.plan import Plan
 
 # What a candidate is made of, which every survey keeps
@@ -45,7 +44,7 @@ def test_tiles_cover_every_cell_once_in_chunks_of_the_store(rows, columns):
         assert tile.number == number
         assert tile.rows.start % height == 0
         assert tile.columns.start % width == 0
-        assert 0 < tile.cells <= height * width <= plans.TILE_CELLS
+        assert 0 < tile.cells <= height * width <= plan.tile_cells
         assert tile.cells == covered[tile.rows, tile.columns].size
         covered[tile.rows, tile.columns] += 1
     assert np.all(covered == 1)

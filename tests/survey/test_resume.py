@@ -14,6 +14,8 @@ import pytest
 import xarray as xr
 from survey_scenarios import written
 
+pytestmark = pytest.mark.slow
+
 COMMAND = [sys.executable, "-c", "from porkgrid.cli import main; main()"]
 TILES = 12
 

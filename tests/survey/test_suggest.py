@@ -56,6 +56,7 @@ def swept(proposal: Proposal, folder) -> tuple[np.ndarray, np.ndarray]:
     return allowed, total
 
 
+@pytest.mark.slow
 @pytest.mark.parametrize("request_", DIRECT, ids=lambda each: "-".join(map(str, each)))
 def test_the_season_of_a_direct_flight_closes_inside_the_windows(request_, tmp_path):
     proposal = proposed(*request_)
@@ -76,6 +77,7 @@ def test_where_seasons_run_into_each_other_the_window_is_cut_and_the_file_says_s
     assert "seasons run into each other" in comments
 
 
+@pytest.mark.slow
 @pytest.mark.parametrize("request_", BY_FLYBYS, ids=lambda each: "-".join(map(str, each)))
 def test_a_route_with_a_flyby_has_allowed_cells_and_closes_inside_the_windows(request_, tmp_path):
     proposal = proposed(*request_)
@@ -123,6 +125,7 @@ def test_a_few_days_of_another_years_season_do_not_make_it_one():
     assert reaches(date(2030, 11, 19), date(2031, 3, 5), 2031)
 
 
+@pytest.mark.slow
 def test_a_route_by_venus_that_has_no_season_in_a_year_gets_one_of_a_later_year():
     proposal = proposed("earth", "venus", "mars", 2033)
     assert proposal.optimum.dates[0] > date(2033, 12, 31)
