@@ -55,7 +55,7 @@ def starling(swept) -> Survey:
 
 
 @pytest.fixture(scope="session")
-def half_rook(tmp_path_factory) -> Iterator[tuple[Path, int]]:
+def half_rook(tmp_path_factory) -> tuple[Path, int]:
     """ROOK with its sweep broken off, and how many of its tiles are done."""
     place = tmp_path_factory.mktemp("half")
 
@@ -67,7 +67,7 @@ def half_rook(tmp_path_factory) -> Iterator[tuple[Path, int]]:
         shrink_tiles(patch)
         with pytest.raises(KeyboardInterrupt):
             sweep(load_scenario(written(place, ROOK)), place / "rook", workers=1, report=break_off)
-        yield place / "rook", len(read_ledger(place / "rook"))
+    return place / "rook", len(read_ledger(place / "rook"))
 
 
 @pytest.fixture(scope="session")
