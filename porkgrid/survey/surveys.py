@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from functools import cached_property
 from pathlib import Path
 from typing import Any
@@ -108,7 +109,7 @@ class Survey:
         >>> survey.plan.measures["c3_km2_s2"].unit, survey.plan.tables[0].position.shape
         ('km²/s²', (3, 71))
         """
-        return make_plan(self.scenario)
+        return replace(make_plan(self.scenario), **self.provenance.get("tiles", {}))
 
     def __repr__(self) -> str:
         return survey_line(self)
